@@ -1,0 +1,3 @@
+"""Aqueous pKa of carboxylic acids from their structure."""
+
+__version__ = "0.1.0"

@@ -1,0 +1,159 @@
+"""A molecule as plain lists, read once from RDKit, so that every descriptor walks it without further calls."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+from rdkit import Chem
+
+
+@dataclass(slots=True, eq=False)
+class Graph:
+    """Atoms and bonds of one molecule, hydrogens counted on their atoms.
+
+    Attributes
+    ----------
+    numbers, charges, hydrogens : list of int
+        Atomic number, formal charge and number of hydrogens of each atom.
+    aromatic : list of bool
+    neighbours : list of list of int
+        Heavy neighbours of each atom.
+    orders : list of list of float
+        Bond orders in the same order as `neighbours`; 1.5 for aromatic bonds.
+    rings : tuple of tuple of int
+        Smallest set of smallest rings, as atom indices in ring order.
+    ring_size : list of int
+        Size of the smallest ring an atom is in, 0 outside rings.
+    double_stereo : dict
+        ``(a, b) -> {(x, y): +1 cis | -1 trans}`` for double bonds with stated configuration.
+    side : dict
+        ``(ring index, atom, neighbour) -> +1 or -1``: which face of the ring a substituent is on.
+    """
+
+    numbers: list[int]
+    charges: list[int]
+    hydrogens: list[int]
+    aromatic: list[bool]
+    neighbours: list[list[int]]
+    orders: list[list[float]]
+    rings: tuple[tuple[int, ...], ...]
+    ring_size: list[int]
+    double_stereo: dict[tuple[int, int], dict[tuple[int, int], int]] = field(default_factory=dict)
+    side: dict[tuple[int, int, int], int] = field(default_factory=dict)
+
+    @classmethod
+    def from_mol(cls, mol: Chem.Mol) -> Graph:
+        """Read atoms and bonds of a sanitised molecule without explicit hydrogens."""
+        numbers, charges, hydrogens, aromatic, tags = [], [], [], [], False
+        for atom in mol.GetAtoms():
+            numbers.append(atom.GetAtomicNum())
+            charges.append(atom.GetFormalCharge())
+            hydrogens.append(atom.GetTotalNumHs())
+            aromatic.append(atom.GetIsAromatic())
+            tags = tags or atom.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED
+        n = len(numbers)
+        neighbours: list[list[int]] = [[] for _ in range(n)]
+        orders: list[list[float]] = [[] for _ in range(n)]
+        stereo = {}
+        for bond in mol.GetBonds():
+            a, b, order = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx(), bond.GetBondTypeAsDouble()
+            neighbours[a].append(b)
+            neighbours[b].append(a)
+            orders[a].append(order)
+            orders[b].append(order)
+            if order == 2.0 and bond.GetStereo() > Chem.BondStereo.STEREOANY:
+                stereo[a, b] = bond
+        rings = mol.GetRingInfo().AtomRings()
+        size = [0] * n
+        for ring in rings:
+            for a in ring:
+                if not size[a] or len(ring) < size[a]:
+                    size[a] = len(ring)
+        graph = cls(numbers, charges, hydrogens, aromatic, neighbours, orders, rings, size)
+        for (a, b), bond in stereo.items():
+            graph.double_stereo[a, b] = _cis_trans(bond, neighbours)
+        if tags and rings:
+            graph.side = _ring_sides(mol, rings)
+        return graph
+
+    def order(self, a: int, b: int) -> float:
+        """Bond order between two neighbours."""
+        return self.orders[a][self.neighbours[a].index(b)]
+
+    def saturated(self, a: int) -> bool:
+        """Whether an atom has single bonds only."""
+        return not self.aromatic[a] and all(o == 1.0 for o in self.orders[a])
+
+    def distances(self, start: int, blocked: frozenset[int] = frozenset()) -> list[int]:
+        """Bonds on the shortest path from `start` to each atom; -1 where there is none.
+
+        Parameters
+        ----------
+        start : int
+        blocked : frozenset of int
+            Atoms that no path may enter.
+        """
+        dist = [-1] * len(self.numbers)
+        dist[start] = 0
+        queue = [start]
+        for a in queue:
+            for b in self.neighbours[a]:
+                if dist[b] < 0 and b not in blocked:
+                    dist[b] = dist[a] + 1
+                    queue.append(b)
+        return dist
+
+
+def _cis_trans(bond: Chem.Bond, neighbours: list[list[int]]) -> dict[tuple[int, int], int]:
+    a, b = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()
+    atoms = list(bond.GetStereoAtoms())
+    if len(atoms) != 2:
+        return {}
+    x0, y0 = atoms
+    sign = 1 if bond.GetStereo() in (Chem.BondStereo.STEREOZ, Chem.BondStereo.STEREOCIS) else -1
+    # STEREOZ/E are CIP labels relative to the stereo atoms RDKit stores, which are the CIP leaders.
+    table = {}
+    for x in neighbours[a]:
+        for y in neighbours[b]:
+            if x == b or y == a:
+                continue
+            table[x, y] = sign * (1 if x == x0 else -1) * (1 if y == y0 else -1)
+    return table
+
+
+def _ring_sides(mol: Chem.Mol, rings: tuple[tuple[int, ...], ...]) -> dict[tuple[int, int, int], int]:
+    """Face of each ring on which the substituents of its chiral atoms lie.
+
+    The sign of one ring is arbitrary (it flips with the direction in which the ring is walked and for the
+    mirror image); only products of two signs of one ring mean something: +1 cis, -1 trans.
+    """
+    sides = {}
+    for index, ring in enumerate(rings):
+        for k, a in enumerate(ring):
+            atom = mol.GetAtomWithIdx(a)
+            tag = atom.GetChiralTag()
+            if tag not in (Chem.ChiralType.CHI_TETRAHEDRAL_CW, Chem.ChiralType.CHI_TETRAHEDRAL_CCW):
+                continue
+            order = [bond.GetOtherAtomIdx(a) for bond in atom.GetBonds()]
+            before, after = ring[k - 1], ring[(k + 1) % len(ring)]
+            outside = [x for x in order if x not in (before, after)]
+            if len(order) == 3:
+                order = [*order, -1]  # the implicit hydrogen; its place is checked by the tests
+                outside.append(-1)
+            if len(outside) != 2:
+                continue
+            wanted = [before, after, outside[0], outside[1]]
+            parity = _parity([wanted.index(x) for x in order])
+            sign = parity if tag == Chem.ChiralType.CHI_TETRAHEDRAL_CW else -parity
+            sides[index, a, outside[0]] = sign
+            sides[index, a, outside[1]] = -sign
+    return sides
+
+
+def _parity(permutation: list[int]) -> int:
+    sign = 1
+    for i in range(len(permutation)):
+        for j in range(i + 1, len(permutation)):
+            if permutation[i] > permutation[j]:
+                sign = -sign
+    return sign

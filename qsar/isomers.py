@@ -1,0 +1,101 @@
+"""Isomers that an incompletely drawn acid leaves open and that differ in pKa: E/Z, and cis/trans on rings."""
+
+from __future__ import annotations
+
+from rdkit import Chem
+from rdkit.Chem.EnumerateStereoisomers import EnumerateStereoisomers, StereoEnumerationOptions
+
+from qsar.structures import Acid, read_acid
+
+MOST = 16
+
+
+def configurations(acid: Acid) -> tuple[list[Acid], str]:
+    """The configurations that the drawing leaves open.
+
+    Parameters
+    ----------
+    acid : Acid
+
+    Returns
+    -------
+    acids : list of Acid
+        One entry, the acid itself, where nothing that matters is open.
+    note : str
+        What was left open, for the user; empty where nothing is.
+    """
+    mol = Chem.Mol(acid.mol)
+    bonds = _open_double_bonds(mol)
+    ring_pairs = _open_ring_pairs(acid)
+    if not bonds and not ring_pairs:
+        return [acid], ""
+    if ring_pairs:
+        options = StereoEnumerationOptions(onlyUnassigned=True, unique=True, maxIsomers=MOST)
+        keep = {a for pair in ring_pairs for a in pair}
+        smiles = {Chem.MolToSmiles(_forget(m, acid.mol, keep)) for m in EnumerateStereoisomers(mol, options=options)}
+    else:
+        smiles = _over_double_bonds(mol, bonds)
+    isomers = [read_acid(s) for s in sorted(smiles)]
+    what = "E/Z" if bonds and not ring_pairs else "cis/trans" if not bonds else "E/Z and cis/trans"
+    if len(isomers) < 2:
+        return [acid], ""
+    return isomers, f"{what} configuration not stated: predicted over {len(isomers)} isomers, interval widened to hold them"
+
+
+def _open_double_bonds(mol: Chem.Mol) -> list[int]:
+    Chem.FindPotentialStereoBonds(mol, cleanIt=False)
+    return [
+        b.GetIdx()
+        for b in mol.GetBonds()
+        if b.GetStereo() == Chem.BondStereo.STEREOANY
+        and b.GetBondType() == Chem.BondType.DOUBLE
+        and b.GetBeginAtom().GetAtomicNum() == b.GetEndAtom().GetAtomicNum() == 6
+        and not b.IsInRing()
+    ]
+
+
+def _over_double_bonds(mol: Chem.Mol, bonds: list[int]) -> set[str]:
+    bonds = bonds[:4]
+    found = set()
+    for code in range(2 ** len(bonds)):
+        copy = Chem.Mol(mol)
+        for k, index in enumerate(bonds):
+            bond = copy.GetBondWithIdx(index)
+            a = next(n.GetIdx() for n in bond.GetBeginAtom().GetNeighbors() if n.GetIdx() != bond.GetEndAtomIdx())
+            b = next(n.GetIdx() for n in bond.GetEndAtom().GetNeighbors() if n.GetIdx() != bond.GetBeginAtomIdx())
+            bond.SetStereoAtoms(a, b)
+            bond.SetStereo(Chem.BondStereo.STEREOCIS if code >> k & 1 else Chem.BondStereo.STEREOTRANS)
+        Chem.AssignStereochemistry(copy, cleanIt=False, force=True)
+        found.add(Chem.MolToSmiles(copy))
+    return found
+
+
+def _open_ring_pairs(acid: Acid) -> list[tuple[int, int]]:
+    """Pairs of saturated ring atoms that both carry COOH and whose relative configuration is not stated."""
+    graph = acid.graph
+    carriers = []
+    for site in acid.sites:
+        alpha = [b for b in graph.neighbours[site] if graph.numbers[b] == 6]
+        if alpha and graph.ring_size[alpha[0]] and graph.hydrogens[alpha[0]] == 1 and graph.saturated(alpha[0]):
+            carriers.append(alpha[0])
+    unspecified = [
+        a for a in carriers if acid.mol.GetAtomWithIdx(a).GetChiralTag() == Chem.ChiralType.CHI_UNSPECIFIED
+    ]
+    return [
+        (a, b)
+        for i, a in enumerate(unspecified)
+        for b in unspecified[i + 1 :]
+        if any(a in ring and b in ring for ring in graph.rings)
+    ]
+
+
+def _forget(mol: Chem.Mol, original: Chem.Mol, keep: set[int]) -> Chem.Mol:
+    """Drop the centres that were enumerated but make no difference to the pKa."""
+    mol = Chem.Mol(mol)
+    for atom in mol.GetAtoms():
+        i = atom.GetIdx()
+        tagged = original.GetAtomWithIdx(i).GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED
+        if not tagged and i not in keep:
+            atom.SetChiralTag(Chem.ChiralType.CHI_UNSPECIFIED)
+    Chem.AssignStereochemistry(mol, cleanIt=True, force=True)
+    return mol

@@ -1,0 +1,141 @@
+"""Monotone gradient boosting from scikit-learn, kept as plain arrays.
+
+Training uses :class:`sklearn.ensemble.HistGradientBoostingRegressor`; what is stored and evaluated are the nodes of
+its trees, so that a bundle needs neither scikit-learn nor pickle.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+Floats = NDArray[np.float64]
+Ints = NDArray[np.int32]
+
+
+@dataclass(frozen=True)
+class BoostingSettings:
+    """Settings of the booster; names as in scikit-learn."""
+
+    max_iter: int = 150
+    learning_rate: float = 0.06
+    max_leaf_nodes: int = 8
+    min_samples_leaf: int = 5
+    l2_regularization: float = 1.0
+    max_features: float = 0.3
+
+
+@dataclass(frozen=True)
+class Trees:
+    """Several boosted ensembles as one flat array of nodes.
+
+    Attributes
+    ----------
+    feature : ndarray of int, shape (n_nodes,)
+        Column that a node splits on; -1 for a leaf.
+    threshold : ndarray, shape (n_nodes,)
+        Rows with a value at most this go left; for a leaf, its value.
+    left, right : ndarray of int, shape (n_nodes,)
+        Children, as positions in these arrays; a leaf points to itself.
+    root : ndarray of int, shape (n_ensembles, n_trees)
+    baseline : ndarray, shape (n_ensembles,)
+    depth : int
+        Splits on the longest path.
+    """
+
+    feature: Ints
+    threshold: Floats
+    left: Ints
+    right: Ints
+    root: Ints
+    baseline: Floats
+    depth: int
+
+    def predict(self, x: Floats, rows_at_once: int = 64) -> Floats:
+        """Predictions of each ensemble.
+
+        Parameters
+        ----------
+        x : ndarray, shape (n, n_columns)
+        rows_at_once : int
+            Rows that are sent down the trees together; bounds the memory.
+
+        Returns
+        -------
+        ndarray, shape (n_ensembles, n)
+        """
+        n_ensembles, n_trees = self.root.shape
+        result = np.empty((n_ensembles, len(x)))
+        split_on = np.maximum(self.feature, 0)
+        for start in range(0, len(x), rows_at_once):
+            block = x[start : start + rows_at_once]
+            flat = block.ravel()
+            offset = (np.arange(len(block)) * block.shape[1])[:, None]
+            node = np.broadcast_to(self.root.ravel(), (len(block), self.root.size))
+            for _ in range(self.depth):
+                goes_left = flat[split_on[node] + offset] <= self.threshold[node]
+                node = np.where(goes_left, self.left[node], self.right[node])
+            leaves = self.threshold[node].reshape(len(block), n_ensembles, n_trees)
+            result[:, start : start + rows_at_once] = leaves.sum(axis=2).T + self.baseline[:, None]
+        return result
+
+
+def fit_booster(x: Floats, y: Floats, weight: Floats, lowers: NDArray[np.bool_], settings: BoostingSettings, seed: int):  # type: ignore[no-untyped-def]
+    """Fit one booster whose prediction never rises along the columns where `lowers` is true.
+
+    Parameters
+    ----------
+    x : ndarray, shape (n, n_columns)
+    y, weight : ndarray, shape (n,)
+    lowers : ndarray of bool, shape (n_columns,)
+    settings : BoostingSettings
+    seed : int
+
+    Returns
+    -------
+    sklearn.ensemble.HistGradientBoostingRegressor
+    """
+    from sklearn.ensemble import HistGradientBoostingRegressor
+
+    return HistGradientBoostingRegressor(
+        max_iter=settings.max_iter,
+        learning_rate=settings.learning_rate,
+        max_leaf_nodes=settings.max_leaf_nodes,
+        min_samples_leaf=settings.min_samples_leaf,
+        l2_regularization=settings.l2_regularization,
+        max_features=settings.max_features,
+        monotonic_cst=np.where(lowers, -1, 0),
+        early_stopping=False,
+        random_state=seed,
+    ).fit(x, y, sample_weight=weight)
+
+
+def trees_of(boosters: list) -> Trees:  # type: ignore[type-arg]
+    """Copy the nodes of fitted boosters (all with the same number of iterations) into arrays."""
+    feature, threshold, left, right, roots, depth = [], [], [], [], [], 0
+    base = 0
+    for booster in boosters:
+        mine = []
+        for (predictor,) in booster._predictors:
+            nodes = predictor.nodes
+            leaf = nodes["is_leaf"].astype(bool)
+            own = np.arange(len(nodes))
+            feature.append(np.where(leaf, -1, nodes["feature_idx"]))
+            threshold.append(np.where(leaf, nodes["value"], nodes["num_threshold"]))
+            left.append(np.where(leaf, own, nodes["left"]) + base)
+            right.append(np.where(leaf, own, nodes["right"]) + base)
+            mine.append(base)
+            base += len(nodes)
+            depth = max(depth, int(nodes["depth"].max()))
+        roots.append(mine)
+    return Trees(
+        np.concatenate(feature).astype(np.int32),
+        np.concatenate(threshold).astype(np.float64),
+        np.concatenate(left).astype(np.int32),
+        np.concatenate(right).astype(np.int32),
+        np.array(roots, dtype=np.int32),
+        np.array([float(np.ravel(b._baseline_prediction)[0]) for b in boosters]),
+        depth,
+    )

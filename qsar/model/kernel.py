@@ -1,0 +1,153 @@
+r"""The trend: a linear free-energy relationship with a smooth correction for the scaffold.
+
+.. math:: \mathrm{pKa}(x) = c - \sum_j w_j z_j + g(s), \qquad w_j \ge 0
+
+``z`` are the columns along which the pKa may only fall (withdrawing groups on saturated carbon), ``s`` all other
+descriptors, scaled, and ``g`` a Gaussian process with a linear and a Matern 3/2 kernel (Rasmussen & Williams,
+Gaussian Processes for Machine Learning, 2006, ch. 2 and 4). The weights are the non-negative least-squares fit in
+the metric of the process (Lawson & Hanson, 1974), so that the trend holds by construction: no edit of a withdrawing
+group touches ``s``.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+Floats = NDArray[np.float64]
+
+CLIP = 4.0  # scaled descriptors beyond this many standard deviations are taken as that far out, no further
+
+
+@dataclass(frozen=True)
+class KernelSettings:
+    """Settings of the trend.
+
+    Attributes
+    ----------
+    length : float
+        Length scale of the Matern kernel in scaled descriptor space.
+    amplitude : float
+        Standard deviation of the smooth correction, pKa units.
+    linear : float
+        Standard deviation of the weight of one scaled descriptor, pKa units.
+    noise : float
+        Standard deviation of the model error of one edge, pKa units.
+    """
+
+    length: float = 8.0
+    amplitude: float = 0.6
+    linear: float = 0.04
+    noise: float = 0.07
+
+
+@dataclass(frozen=True)
+class Scaling:
+    """Which descriptors are free (not constrained), and how they are scaled.
+
+    Attributes
+    ----------
+    mean, scale : ndarray, shape (n_free,)
+        A scaled value is ``(x - mean) * scale``; constant columns have scale 0.
+    """
+
+    mean: Floats
+    scale: Floats
+
+    @classmethod
+    def of(cls, free: Floats) -> Scaling:
+        """Scaling of the rows of `free`, shape (n, n_free)."""
+        deviation = free.std(axis=0)
+        scale = np.divide(1.0, deviation, out=np.zeros_like(deviation), where=deviation > 1e-9)
+        return cls(free.mean(axis=0), scale)
+
+    def __call__(self, free: Floats) -> Floats:
+        scaled: Floats = np.clip((free - self.mean) * self.scale, -CLIP, CLIP)
+        return scaled
+
+
+def covariance(a: Floats, b: Floats, settings: KernelSettings) -> Floats:
+    """Prior covariance of the scaffold part between scaled rows `a` (n, d) and `b` (m, d); shape (n, m)."""
+    product = a @ b.T
+    squared = np.einsum("ij,ij->i", a, a)[:, None] + np.einsum("ij,ij->i", b, b)[None] - 2.0 * product
+    r = np.sqrt(3.0 * np.maximum(squared, 0.0)) / settings.length
+    matern = settings.amplitude**2 * (1.0 + r) * np.exp(-r)
+    result: Floats = matern + settings.linear**2 * product + 1.0
+    return result
+
+
+@dataclass(frozen=True)
+class KernelTrend:
+    """A fitted trend.
+
+    Attributes
+    ----------
+    settings : KernelSettings
+    scaling : Scaling
+    points : ndarray, shape (n_train, n_free)
+        Scaled free descriptors of the training edges.
+    dual : ndarray, shape (n_train,)
+        Weights of the training edges.
+    slopes : ndarray, shape (n_lowers,)
+        Non-negative weights of the constrained columns.
+    offset : float
+        pKa at zero.
+    """
+
+    settings: KernelSettings
+    scaling: Scaling
+    points: Floats
+    dual: Floats
+    slopes: Floats
+    offset: float
+
+    def predict(self, free: Floats, lowers: Floats) -> Floats:
+        """Micro pKa of edges.
+
+        Parameters
+        ----------
+        free : ndarray, shape (n, n_free)
+        lowers : ndarray, shape (n, n_lowers)
+
+        Returns
+        -------
+        ndarray, shape (n,)
+        """
+        k = covariance(self.scaling(free), self.points, self.settings)
+        result: Floats = self.offset - lowers @ self.slopes + k @ self.dual
+        return result
+
+
+def fit_trend(
+    free: Floats, lowers: Floats, target: Floats, variance: Floats, settings: KernelSettings, scaling: Scaling
+) -> KernelTrend:
+    """Fit a trend.
+
+    Parameters
+    ----------
+    free, lowers : ndarray, shape (n, n_free) and (n, n_lowers)
+    target : ndarray, shape (n,)
+        Micro pKa.
+    variance : ndarray, shape (n,)
+        Variance of each target, pKa units squared.
+    settings : KernelSettings
+    scaling : Scaling
+
+    Returns
+    -------
+    KernelTrend
+    """
+    from scipy.linalg import cho_solve, cholesky, solve_triangular
+    from scipy.optimize import nnls
+
+    points = scaling(free)
+    offset = 4.5
+    lower = cholesky(covariance(points, points, settings) + np.diag(variance + settings.noise**2), lower=True)
+    whitened = solve_triangular(lower, np.column_stack([-lowers, target - offset]), lower=True)
+    # A very small ridge keeps the weights of nearly equal columns from hopping between folds.
+    ridge = 0.05 * np.eye(lowers.shape[1])
+    slopes, _ = nnls(np.vstack([whitened[:, :-1], ridge]), np.append(whitened[:, -1], np.zeros(len(ridge))))
+    dual = cho_solve((lower, True), target - offset + lowers @ slopes)
+    return KernelTrend(settings, scaling, points, dual, slopes, offset)

@@ -1,0 +1,198 @@
+"""The ensemble: for each fold a trend and a booster that never saw the fold's acids.
+
+One member a fold makes the ensemble, and each acid has exactly one member that was fitted without it, so that
+out-of-fold predictions, CV+ intervals and the spread all come from the same fits.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from qsar.descriptors import LOWERS
+from qsar.model.boosting import BoostingSettings, Trees, fit_booster, trees_of
+from qsar.model.kernel import KernelSettings, Scaling, covariance, fit_trend
+from qsar.model.training_set import TrainingSet, latent_targets
+
+Floats = NDArray[np.float64]
+Ints = NDArray[np.int64]
+
+START_NEUTRAL = 4.3  # where the latent micro constants begin; two rounds later nothing is left of it
+
+
+@dataclass(frozen=True)
+class Settings:
+    """Everything that decides the outcome of a training besides the table.
+
+    Attributes
+    ----------
+    folds : int
+        Members of the ensemble; acids are dealt out to them by `seed`.
+    inner_folds : int
+        Folds within a member by which the booster sees honest residuals of the trend.
+    rounds : int
+        Rounds of the latent micro constants.
+    boosting_share : float
+        Share of the booster's correction that is added to the trend.
+    """
+
+    folds: int = 10
+    inner_folds: int = 6
+    rounds: int = 3
+    boosting_share: float = 0.5
+    seed: int = 1
+    kernel: KernelSettings = field(default_factory=KernelSettings)
+    boosting: BoostingSettings = field(default_factory=BoostingSettings)
+
+
+@dataclass(frozen=True)
+class Members:
+    """The fitted ensemble as arrays.
+
+    Attributes
+    ----------
+    settings : Settings
+    scaling : Scaling
+    points : ndarray, shape (n_points, n_free)
+        Scaled free descriptors of the training edges.
+    dual : ndarray, shape (n_members, n_points)
+    slopes : ndarray, shape (n_members, n_lowers)
+    offset : float
+    trees : Trees
+        One ensemble a member.
+    """
+
+    settings: Settings
+    scaling: Scaling
+    points: Floats
+    dual: Floats
+    slopes: Floats
+    offset: float
+    trees: Trees
+
+    def predict(self, x: Floats) -> tuple[Floats, Floats]:
+        """Micro pKa by each member.
+
+        Parameters
+        ----------
+        x : ndarray, shape (n, n_descriptors)
+
+        Returns
+        -------
+        trend, boosted : ndarray, shape (n_members, n)
+            The trend alone and the booster's correction, already scaled by its share.
+        """
+        free, lowers = x[:, ~LOWERS], x[:, LOWERS]
+        k = covariance(self.scaling(free), self.points, self.settings.kernel)
+        trend = self.offset - self.slopes @ lowers.T + self.dual @ k.T
+        return trend, self.settings.boosting_share * self.trees.predict(x)
+
+
+def fold_of_acids(n_acids: int, settings: Settings) -> Ints:
+    """Fold of each acid, balanced and drawn from the seed; shape (n_acids,)."""
+    order = np.random.default_rng(settings.seed).permutation(n_acids)
+    fold = np.empty(n_acids, dtype=np.int64)
+    fold[order] = np.arange(n_acids) % settings.folds
+    return fold
+
+
+@dataclass(frozen=True)
+class _Member:
+    dual: Floats
+    slopes: Floats
+    offset: float
+    booster: object
+
+
+def fit_member(data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], settings: Settings, seed: int) -> _Member:
+    """Fit trend and booster on the wanted measurements.
+
+    Parameters
+    ----------
+    data : TrainingSet
+    scaling : Scaling
+    wanted : ndarray of bool, shape (n_steps,)
+    settings : Settings
+    seed : int
+        For the booster and the inner folds.
+    """
+    free, lowers = data.x[:, ~LOWERS], data.x[:, LOWERS]
+    micro = np.full(len(data.x), START_NEUTRAL)
+    targets = latent_targets(data, micro, wanted)
+    for _ in range(settings.rounds):
+        trend = fit_trend(
+            free[targets.edge], lowers[targets.edge], targets.value, targets.variance, settings.kernel, scaling
+        )
+        micro = trend.predict(free, lowers)
+        targets = latent_targets(data, micro, wanted)
+    trend = fit_trend(
+        free[targets.edge], lowers[targets.edge], targets.value, targets.variance, settings.kernel, scaling
+    )
+    residual = np.empty(len(targets.edge))
+    rng = np.random.default_rng(seed)
+    inner = rng.integers(settings.inner_folds, size=len(data.acids))[data.owner[targets.edge]]
+    for fold in range(settings.inner_folds):
+        rest, held = targets.edge[inner != fold], inner == fold
+        if not held.any() or not len(rest):
+            residual[held] = 0.0
+            continue
+        other = fit_trend(
+            free[rest], lowers[rest], targets.value[~held], targets.variance[~held], settings.kernel, scaling
+        )
+        residual[held] = targets.value[held] - other.predict(free[targets.edge[held]], lowers[targets.edge[held]])
+    booster = fit_booster(data.x[targets.edge], residual, targets.share, LOWERS, settings.boosting, seed)
+    dual = np.zeros(len(data.x))
+    np.add.at(dual, targets.edge, trend.dual)
+    return _Member(dual, trend.slopes, trend.offset, booster)
+
+
+def fit_members(
+    data: TrainingSet, settings: Settings, done: Callable[[int], object] = lambda _: None
+) -> tuple[Members, Ints]:
+    """Fit the ensemble.
+
+    Parameters
+    ----------
+    data : TrainingSet
+    settings : Settings
+    done : callable
+        Called with 1 after each member, for progress.
+
+    Returns
+    -------
+    members : Members
+    fold : ndarray of int, shape (n_acids,)
+        Member that never saw each acid.
+    """
+    fold = fold_of_acids(len(data.acids), settings)
+    scaling = Scaling.of(data.x[:, ~LOWERS])
+    fitted = []
+    for k in range(settings.folds):
+        wanted = fold[data.step_acid] != k
+        fitted.append(fit_member(data, scaling, wanted, settings, settings.seed + 1000 * k))
+        done(1)
+    members = Members(
+        settings,
+        scaling,
+        scaling(data.x[:, ~LOWERS]),
+        np.array([m.dual for m in fitted]),
+        np.array([m.slopes for m in fitted]),
+        fitted[0].offset,
+        trees_of([m.booster for m in fitted]),
+    )
+    return members, fold
+
+
+def out_of_fold(data: TrainingSet, members: Members, fold: Ints) -> tuple[Floats, Floats]:
+    """Micro pKa of the training edges by the member that never saw their acid, and its booster's part.
+
+    Returns
+    -------
+    micro, boosted : ndarray, shape (n_edges,)
+    """
+    trend, boosted = members.predict(data.x)
+    pick = fold[data.owner], np.arange(len(data.x))
+    return trend[pick] + boosted[pick], boosted[pick]

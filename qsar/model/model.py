@@ -1,0 +1,351 @@
+"""A trained model: from acids to pKa steps with interval, verdict, reasons and evidence."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from qsar.advisories import advise
+from qsar.descriptors import Molecule, SiteView
+from qsar.errors import UserError
+from qsar.ionisation import closure_defect, cube, edge_descriptors, macroscopic
+from qsar.isomers import configurations
+from qsar.model.domain import VERDICTS, Domain, has_cation
+from qsar.model.intervals import Calibration
+from qsar.model.library import Library
+from qsar.model.members import Members
+from qsar.model.neighbours import Neighbours
+from qsar.model.training_set import dominant_edge
+from qsar.structures import Acid, StructureError, read_acid
+
+Floats = NDArray[np.float64]
+_NEAR = 5
+
+
+@dataclass(frozen=True)
+class Neighbour:
+    """A measured acid as evidence."""
+
+    smiles: str
+    name: str
+    step: int
+    pka: float
+    distance: float
+    source: str
+
+
+@dataclass(frozen=True)
+class StepPrediction:
+    """Prediction of one carboxyl step; the fields are those of the table of predictions.
+
+    Attributes
+    ----------
+    neighbours : tuple of Neighbour
+        The nearest measured steps, nearest first.
+    expected_error : float
+        Expected absolute error, pKa units.
+    """
+
+    step: int
+    pka: float
+    low: float
+    high: float
+    coverage: float
+    domain: str
+    reasons: tuple[str, ...]
+    nearest: str
+    nearest_pka: float | None
+    nearest_distance: float | None
+    measured: float | None
+    pka_without: float | None
+    model: str
+    expected_error: float
+    neighbours: tuple[Neighbour, ...] = ()
+    measured_source: str = ""
+    measured_uncertainty: float | None = None
+
+
+@dataclass(frozen=True)
+class Prediction:
+    """Prediction of one input.
+
+    Attributes
+    ----------
+    structure : str
+        Canonical SMILES; empty where the input could not be used.
+    steps : list of StepPrediction
+    error : str or None
+        Why the input could not be used.
+    acid : Acid or None
+    """
+
+    structure: str
+    steps: list[StepPrediction]
+    error: str | None = None
+    acid: Acid | None = None
+
+
+@dataclass(frozen=True)
+class _Case:
+    """One configuration of one input while it is predicted."""
+
+    acid: Acid
+    molecule: Molecule
+    x: Floats
+
+
+@dataclass(frozen=True, eq=False)
+class Model:
+    """A trained model.
+
+    Attributes
+    ----------
+    card : dict
+        What ``card.json`` says.
+    members : Members
+    neighbours : Neighbours
+    calibration : Calibration
+    domain : Domain
+    library : Library
+    """
+
+    card: dict[str, Any]
+    members: Members
+    neighbours: Neighbours
+    calibration: Calibration
+    domain: Domain
+    library: Library
+
+    @property
+    def name(self) -> str:
+        """Name of the bundle."""
+        return str(self.card["name"])
+
+    def micro(self, x: Floats) -> Floats:
+        """Micro pKa of edges by each member; shape (n_members, n).
+
+        Parameters
+        ----------
+        x : ndarray, shape (n, n_descriptors)
+        """
+        trend, boosted = self.members.predict(x)
+        return trend + boosted
+
+    def predict(self, acids: Sequence[str | Acid | StructureError], coverage: float = 0.9) -> list[Prediction]:
+        """Predict acids.
+
+        Parameters
+        ----------
+        acids : sequence of str, Acid or StructureError
+            SMILES or standardised acids; an error stands for an input that could not be read.
+        coverage : float
+            Fraction of acids that the intervals are meant to hold, in [0.5, 0.99].
+
+        Returns
+        -------
+        list of Prediction
+            One for each input, in order.
+
+        Raises
+        ------
+        UserError
+            If `coverage` is out of range.
+        """
+        if not 0.5 <= coverage <= 0.99:
+            raise UserError(f"coverage {coverage:g} is out of range; give a fraction from 0.5 to 0.99")
+        results: list[Prediction | None] = [None] * len(acids)
+        cases: list[_Case] = []
+        places: list[tuple[int, list[int], str]] = []
+        for i, given in enumerate(acids):
+            try:
+                if isinstance(given, StructureError):
+                    raise given
+                acid = given if isinstance(given, Acid) else read_acid(given)
+            except StructureError as error:
+                results[i] = Prediction("", [], str(error))
+                continue
+            isomers, note = configurations(acid)
+            own = list(range(len(cases), len(cases) + len(isomers)))
+            cases.extend(_Case(a, Molecule(a.graph), edge_descriptors(a)) for a in isomers)
+            places.append((i, own, note))
+            results[i] = Prediction(acid.smiles, [], None, acid)
+        if cases:
+            steps = self._predict_cases(cases, coverage)
+            for i, own, note in places:
+                first = results[i]
+                assert first is not None and first.acid is not None
+                joined = _join([steps[k] for k in own], note)
+                results[i] = Prediction(first.structure, self._finish(first.acid, joined), None, first.acid)
+        return [r for r in results if r is not None]
+
+    def _predict_cases(self, cases: list[_Case], coverage: float) -> list[list[StepPrediction]]:
+        trend, boosted = self.members.predict(np.vstack([case.x for case in cases]))
+        by_member = trend + boosted
+        first = np.concatenate([[0], np.cumsum([len(case.x) for case in cases])])
+        rows: list[tuple[int, int, int]] = []  # case, step, edge
+        macro: list[Floats] = []
+        pka: list[float] = []
+        defects: list[float] = []
+        for c, case in enumerate(cases):
+            own = slice(int(first[c]), int(first[c + 1]))
+            n = len(case.acid.sites)
+            mean = by_member[:, own].mean(axis=0)
+            whole = macroscopic(mean, n)
+            each = macroscopic(by_member[:, own], n)
+            defect = float(closure_defect(mean, n)) if n > 1 else 0.0
+            for step in range(1, n + 1):
+                rows.append((c, step, own.start + (dominant_edge(mean, n, step) if n > 1 else 0)))
+                macro.append(each[:, step - 1])
+                pka.append(float(whole[step - 1]))
+                defects.append(defect)
+        edge = np.array([r[2] for r in rows])
+        x = np.vstack([case.x for case in cases])[edge]
+        views = [self._view(cases[c], int(e - first[c])) for c, _, e in rows]
+        distances = self.neighbours.distances(self.members, x)
+        near = np.argsort(distances, axis=1, kind="stable")[:, :_NEAR]
+        evidence = evidence_of(
+            distances,
+            np.abs(self.library.pka - self.library.pka_without),
+            np.abs(boosted[:, edge]).mean(axis=0),
+            np.array(defects),
+            np.array([self.domain.sparse(view) for view in views]),
+        )
+        scale = self.calibration.expected_error(evidence)
+        label = np.array([class_of(views[k], len(cases[c].acid.sites), step) for k, (c, step, _) in enumerate(rows)])
+        low, high = self.calibration.interval(np.array(macro).T, scale, label, coverage)
+        result: list[list[StepPrediction]] = [[] for _ in cases]
+        for k, (c, step, _) in enumerate(rows):
+            found = tuple(self._neighbour(int(j), float(distances[k, j])) for j in near[k])
+            best = found[0]
+            verdict, reasons = self.domain.judge(
+                views[k], float(scale[k]), best.name or best.smiles or "an acid without a name", best.distance
+            )
+            result[c].append(
+                StepPrediction(
+                    step,
+                    pka[k],
+                    float(min(low[k], pka[k])),
+                    float(max(high[k], pka[k])),
+                    coverage,
+                    verdict,
+                    (*reasons, *cases[c].acid.notes),
+                    best.smiles,
+                    best.pka,
+                    best.distance,
+                    None,
+                    None,
+                    self.name,
+                    float(scale[k]),
+                    found,
+                )
+            )
+        return result
+
+    def _view(self, case: _Case, edge: int) -> SiteView:
+        network = cube(len(case.acid.sites))
+        state = int(network.start[edge])
+        sites = case.acid.sites
+        ionised = frozenset(s for k, s in enumerate(sites) if state >> k & 1)
+        return SiteView(case.molecule, sites[int(network.site[edge])], ionised)
+
+    def _neighbour(self, row: int, distance: float) -> Neighbour:
+        library = self.library
+        return Neighbour(
+            library.smiles[row],
+            library.name[row],
+            int(library.step[row]),
+            float(library.pka[row]),
+            distance,
+            library.source[row],
+        )
+
+    def _finish(self, acid: Acid, steps: list[StepPrediction]) -> list[StepPrediction]:
+        """Add what was measured of the acid itself, and what else a user should know about it."""
+        known = self.library.rows_of(acid.smiles)
+        advice = advise(acid.mol)
+        finished = []
+        for s in steps:
+            row = known.get(s.step)
+            measured = None if row is None else float(self.library.pka[row])
+            without = None if row is None else float(self.library.pka_without[row])
+            finished.append(
+                replace(
+                    s,
+                    reasons=tuple(dict.fromkeys((*s.reasons, *acid.notes, *advice))),
+                    measured=measured,
+                    pka_without=without,
+                    measured_source="" if row is None else self.library.source[row],
+                    measured_uncertainty=None if row is None else float(self.library.uncertainty[row]),
+                )
+            )
+        return finished
+
+
+def _join(isomers: list[list[StepPrediction]], note: str) -> list[StepPrediction]:
+    """One prediction over all isomers: the mean, an interval that holds theirs, the worst verdict."""
+    if len(isomers) == 1:
+        return isomers[0]
+    joined = []
+    for same in zip(*isomers, strict=True):
+        nearest = min(same, key=lambda s: s.nearest_distance or 0.0)
+        worst = max(same, key=lambda s: VERDICTS.index(s.domain))
+        joined.append(
+            replace(
+                nearest,
+                pka=float(np.mean([s.pka for s in same])),
+                low=min(s.low for s in same),
+                high=max(s.high for s in same),
+                domain=worst.domain,
+                reasons=(note, *worst.reasons),
+                expected_error=max(s.expected_error for s in same),
+            )
+        )
+    return joined
+
+
+def class_of(view: SiteView, n_sites: int, step: int) -> int:
+    """Position in :data:`qsar.model.intervals.CLASSES` of a step."""
+    if n_sites > 1:
+        return 1 if step == 1 else 2
+    return 3 if has_cation(view) else 0
+
+
+def evidence_of(distances: Floats, errors: Floats, boosted: Floats, defect: Floats, sparse: Floats) -> Floats:
+    """Evidence of difficulty; columns as in :data:`qsar.model.intervals.EVIDENCE`.
+
+    Parameters
+    ----------
+    distances : ndarray, shape (n, n_steps)
+        To the measured steps; infinite where one must not be used.
+    errors : ndarray, shape (n_steps,)
+        Absolute out-of-fold errors of the measured steps.
+    boosted : ndarray, shape (n,)
+        Size of the booster's correction.
+    defect : ndarray, shape (n,)
+        Closure defect of the network.
+    sparse : ndarray, shape (n,)
+        How thinly the groups are covered.
+
+    Returns
+    -------
+    ndarray, shape (n, n_evidence)
+    """
+    near = np.argsort(distances, axis=1, kind="stable")[:, :_NEAR]
+    ordered = np.take_along_axis(distances, near, axis=1)
+    weight = 1.0 / (ordered + 0.1)
+    local = (np.minimum(errors[near], 1.0) * weight).sum(axis=1) / weight.sum(axis=1)
+    return np.column_stack(
+        [
+            np.ones(len(distances)),
+            np.minimum(ordered[:, 0], 3.0),
+            np.minimum(ordered[:, :3].mean(axis=1), 3.0),
+            local,
+            boosted,
+            defect,
+            sparse,
+        ]
+    )

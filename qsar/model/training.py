@@ -1,0 +1,170 @@
+"""Training: from measured steps to a model with calibrated intervals and a domain."""
+
+from __future__ import annotations
+
+import platform
+from collections.abc import Callable, Sequence
+from datetime import date
+from typing import Any
+
+import numpy as np
+
+from qsar.descriptors import Molecule, SiteView
+from qsar.descriptors.pipeline import NAMES
+from qsar.ionisation import cube
+from qsar.model.bundle import KIND, SCHEMA, settings_to
+from qsar.model.domain import Domain
+from qsar.model.intervals import Calibration, fit_scale
+from qsar.model.library import Library
+from qsar.model.members import Members, Settings, fit_members, out_of_fold
+from qsar.model.model import Model, class_of, evidence_of
+from qsar.model.neighbours import Neighbours
+from qsar.model.training_set import Floats, Ints, TrainingSet, training_set
+from qsar.table import Measurement
+
+
+def train(
+    measurements: Sequence[Measurement],
+    name: str,
+    settings: Settings | None = None,
+    *,
+    weights: Sequence[float] | None = None,
+    provenance: dict[str, Any] | None = None,
+    withhold_structures: bool = False,
+    done: Callable[[int], object] = lambda _: None,
+) -> Model:
+    """Train a model.
+
+    Parameters
+    ----------
+    measurements : sequence of Measurement
+    name : str
+        Name of the bundle.
+    settings : Settings, optional
+    weights : sequence of float, optional
+        Weight of each measurement; 1 where not given.
+    provenance : dict, optional
+        Entries for the card: table, its SHA-256, number of rows and the like.
+    withhold_structures : bool
+        Leave the training acids' structures and names out of the model; neighbours are then shown as values only.
+    done : callable
+        Called with 1 after each member.
+
+    Returns
+    -------
+    Model
+        The same arrays, bit for bit, from the same measurements, settings and library versions.
+    """
+    settings = settings or Settings()
+    data = training_set(measurements, weights)
+    members, fold = fit_members(data, settings, done)
+    return assemble(data, members, fold, name, provenance or {}, withhold_structures=withhold_structures)
+
+
+def assemble(
+    data: TrainingSet, members: Members, fold: Ints, name: str, provenance: dict[str, Any], *, withhold_structures: bool
+) -> Model:
+    """Calibrate fitted members and join everything into a model."""
+    micro, boosted = out_of_fold(data, members, fold)
+    without = data.steps(micro)
+    trend, correction = members.predict(data.x)
+    dominant = data.dominant_edges((trend + correction).mean(axis=0))
+    x = data.x[dominant]
+    neighbours = Neighbours.of(members, x)
+    views = [_view(data, int(a), int(e)) for a, e in zip(data.step_acid, dominant, strict=True)]
+    by_acid: dict[int, list[SiteView]] = {}
+    for acid, view in zip(data.step_acid, views, strict=True):
+        by_acid.setdefault(int(acid), []).append(view)
+    domain = Domain.of(by_acid.values(), np.ones(1))
+    error = np.abs(data.pka - without)
+    distances = neighbours.distances(members, x)
+    step_fold = fold[data.step_acid]
+    distances[step_fold[:, None] == step_fold[None]] = np.inf  # as if the whole fold had not been measured
+    defect = _defects(data, micro)
+    sparse = np.array([domain.sparse(view, less=1) for view in views])
+    evidence = evidence_of(distances, error, np.abs(boosted[dominant]), defect, sparse)
+    coefficients = fit_scale(evidence, error)
+    label = np.array(
+        [
+            class_of(view, len(data.acids[a].sites), int(step))
+            for view, a, step in zip(views, data.step_acid, data.step_number, strict=True)
+        ]
+    )
+    calibration = Calibration(coefficients, np.zeros(0), step_fold, label)
+    expected = calibration.expected_error(evidence)
+    calibration = Calibration(coefficients, error / expected, step_fold, label)
+    domain = Domain(domain.counts, float(np.quantile(expected, 0.72)), float(np.quantile(expected, 0.92)))
+    library = Library(
+        ["" if withhold_structures else data.acids[a].smiles for a in data.step_acid],
+        ["" if withhold_structures else n.replace("\t", " ") for n in data.name],
+        [f.replace("\t", " ") for f in data.family],
+        [s.replace("\t", " ") for s in data.source],
+        data.step_number,
+        data.pka,
+        data.uncertainty,
+        without,
+        expected,
+    )
+    card = _card(data, members, domain, name, provenance, error, withhold_structures)
+    return Model(card, members, neighbours, calibration, domain, library)
+
+
+def _view(data: TrainingSet, acid: int, edge: int) -> SiteView:
+    sites = data.acids[acid].sites
+    network = cube(len(sites))
+    local = edge - int(data.first[acid])
+    state = int(network.start[local])
+    ionised = frozenset(s for k, s in enumerate(sites) if state >> k & 1)
+    return SiteView(Molecule(data.acids[acid].graph), sites[int(network.site[local])], ionised)
+
+
+def _defects(data: TrainingSet, micro: Floats) -> Floats:
+    from qsar.ionisation import closure_defect
+
+    result = np.zeros(len(data.pka))
+    for row, acid in enumerate(data.step_acid):
+        n = len(data.acids[acid].sites)
+        if n > 1:
+            result[row] = closure_defect(micro[data.edges(int(acid))], n)
+    return result
+
+
+def _card(
+    data: TrainingSet,
+    members: Members,
+    domain: Domain,
+    name: str,
+    provenance: dict[str, Any],
+    error: Floats,
+    withheld: bool,
+) -> dict[str, Any]:
+    import rdkit
+    import scipy
+    import sklearn
+
+    return {
+        "kind": KIND,
+        "schema": SCHEMA,
+        "name": name,
+        "date": date.today().isoformat(),
+        "acids": len(data.acids),
+        "steps": len(data.pka),
+        **provenance,
+        "structures_withheld": withheld,
+        "libraries": {
+            "python": platform.python_version(),
+            "numpy": np.__version__,
+            "scipy": scipy.__version__,
+            "scikit-learn": sklearn.__version__,
+            "rdkit": rdkit.__version__,
+        },
+        "settings": settings_to(members.settings),
+        "descriptors": list(NAMES),
+        "tree_depth": members.trees.depth,
+        "borderline_above": domain.borderline_above,
+        "outside_above": domain.outside_above,
+        "metrics": {
+            "out_of_fold_mean_absolute_error": float(error.mean()),
+            "out_of_fold_median_absolute_error": float(np.median(error)),
+        },
+    }
