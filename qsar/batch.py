@@ -71,6 +71,7 @@ def predict_records(
     UserError
         If the model cannot be opened.
     """
+    _one_thread()
     chunks = _chunks(records, chunk)
     if jobs == 1:
         model = open_model()
@@ -80,6 +81,16 @@ def predict_records(
     open_model()  # here as well, so that a model that cannot be read is said at once
     with closing(_Workers(open_model, coverage, jobs, debug)) as workers:
         yield from workers.answers(chunks)
+
+
+def _one_thread() -> None:
+    """Keep numpy, and that of processes to come, to one thread each, unless the user said otherwise.
+
+    The matrices are small, so that more threads cost time; and sums come out alike to the last digit however
+    many processes there are. A numpy that is loaded already stays as it is.
+    """
+    for name in ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS"):
+        os.environ.setdefault(name, "1")
 
 
 def _chunks(records: Iterable[Record], size: int) -> Iterator[list[Record]]:
@@ -202,8 +213,6 @@ _worker: tuple[Model, float, bool]
 
 def _begin_worker(open_model: OpenModel, coverage: float, debug: bool) -> None:
     global _worker
-    for name in ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS"):
-        os.environ.setdefault(name, "1")  # the processes share the cores already
     _worker = (open_model(), coverage, debug)
 
 

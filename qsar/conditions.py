@@ -353,7 +353,7 @@ def water_pkw(temperature_c: float = REFERENCE_C) -> float:
 
     Examples
     --------
-    >>> round(water_pkw(25.0), 2)
+    >>> round(water_pkw(25.0), 1)
     14.0
     """
     kelvin = check_temperature(temperature_c) + ZERO_CELSIUS

@@ -72,6 +72,7 @@ class Graph:
         graph = cls(numbers, charges, hydrogens, aromatic, neighbours, orders, rings, size)
         for (a, b), bond in stereo.items():
             graph.double_stereo[a, b] = _cis_trans(bond, neighbours)
+        graph.double_stereo.update(_held_cis(graph))
         if tags and rings:
             graph.side = _ring_sides(mol, rings)
         return graph
@@ -118,6 +119,26 @@ def _cis_trans(bond: Chem.Bond, neighbours: list[list[int]]) -> dict[tuple[int, 
             if x == b or y == a:
                 continue
             table[x, y] = sign * (1 if x == x0 else -1) * (1 if y == y0 else -1)
+    return table
+
+
+def _held_cis(graph: Graph) -> dict[tuple[int, int], dict[tuple[int, int], int]]:
+    """Double bonds that a ring of up to seven atoms holds cis, where no configuration needs to be stated."""
+    table: dict[tuple[int, int], dict[tuple[int, int], int]] = {}
+    for ring in graph.rings:
+        if len(ring) > 7:
+            continue
+        for k, b in enumerate(ring):
+            a = ring[k - 1]
+            if graph.aromatic[a] or graph.order(a, b) != 2.0:
+                continue
+            members = set(ring)
+            table[a, b] = {
+                (x, y): 1 if (x in members) == (y in members) else -1
+                for x in graph.neighbours[a]
+                for y in graph.neighbours[b]
+                if x != b and y != a
+            }
     return table
 
 

@@ -27,6 +27,7 @@ MAX_QUOTED_LINES = 50
 MAX_UNPACKED = 2 << 30
 
 _DELIMITERS = (",", ";", "\t", "|")
+_END = ""  # no line is empty: each has its end
 _BYTE_ORDER_MARKS = (
     (codecs.BOM_UTF8, "utf-8-sig"),
     (codecs.BOM_UTF32_LE, "utf-32"),
@@ -196,20 +197,19 @@ def _text_table(handle: IO[str], wanted: frozenset[str], delimiter: str | None) 
         number += 1
         if block is None:
             raise UserError(f"row {number} is longer than {MAX_LINE:,} characters: not a table")
-        if mark := re.fullmatch(r"sep=(.)\s*", block[0], re.IGNORECASE):
+        if mark := re.fullmatch(r"sep=([,;|\t])\s*", block[0], re.IGNORECASE):
             delimiter = mark[1]
             continue
         if block[0].strip():
             break
     else:
         raise UserError("the file is empty")
-    choices = (delimiter,) if delimiter else _DELIMITERS
-    parsed = [(d, _strip(_parse(block, d)[0])) for d in choices]
-    if delimiter == "\t" and not wanted.intersection(name.casefold() for name in parsed[0][1]):
-        parsed += [(d, _strip(_parse(block, d)[0])) for d in _DELIMITERS]
-    best, columns = max(
-        parsed, key=lambda pair: (any(name.casefold() in wanted for name in pair[1]), len(pair[1]))
-    )
+    choices = (delimiter, *_DELIMITERS) if delimiter in (None, "\t") else (delimiter,)
+    try:
+        headers = [(d, _strip(_parse(block, d)[0])) for d in choices if d]
+    except csv.Error as problem:
+        raise UserError(f"row {number}: {_broken_row(block[0], problem)}") from problem
+    best, columns = max(headers, key=lambda h: (any(name.casefold() in wanted for name in h[1]), len(h[1])))
     return Table(tuple(columns), _text_rows(records, best, number, len(columns)))
 
 
@@ -258,28 +258,26 @@ class _Records:
 
     def __init__(self, lines: Iterator[str | None]) -> None:
         self._lines = lines
-        self._returned: deque[str] = deque()
+        self._returned: deque[str | None] = deque()
 
     def __iter__(self) -> Iterator[list[str] | None]:
-        while True:
-            if self._returned:
-                line: str | None = self._returned.popleft()
-            else:
-                try:
-                    line = next(self._lines)
-                except StopIteration:
-                    return
+        for line in iter(self._next, _END):
             yield None if line is None else self._closed(line)
 
-    def give_back(self, lines: Sequence[str]) -> None:
+    def _next(self) -> str | None:
+        """Next line, None for one that is too long, `_END` after the last."""
+        return self._returned.popleft() if self._returned else next(self._lines, _END)
+
+    def give_back(self, lines: Sequence[str | None]) -> None:
         """Put lines back, to be read next."""
         self._returned.extendleft(reversed(lines))
 
     def _closed(self, first: str) -> list[str]:
         block, marks = [first], first.count('"')
         while marks % 2 and len(block) < MAX_QUOTED_LINES:
-            line = self._returned.popleft() if self._returned else next(self._lines, None)
-            if line is None:
+            line = self._next()
+            if not line:  # the end, or a line that is too long
+                self.give_back([] if line == _END else [line])
                 break
             block.append(line)
             marks += line.count('"')

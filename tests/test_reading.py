@@ -134,6 +134,11 @@ def test_quotation_mark_that_is_never_closed_costs_one_row(write: Callable[..., 
     assert records[-1].id == f"r{len(rows) - 1}"
 
 
+def test_row_too_long_after_an_open_quotation_mark_is_still_said(write: Callable[..., Path]) -> None:
+    records = read(write("acids.csv", f'id,smiles\na,"OC=O\nb,{"C" * 1_500_000}\nc,OC=O\n'))
+    assert [bool(record.error) for record in records] == [True, True, False]
+
+
 def test_inch_marks_are_no_quotes(write: Callable[..., Path]) -> None:
     records = read(write("acids.csv", 'id,smiles\n5" pipe,CC(=O)O\n6" pipe,OC=O\n7" pipe,OC=O\n'))
     assert brief(records) == [('5" pipe', "CC(=O)O"), ('6" pipe', "OC=O"), ('7" pipe', "OC=O")]
@@ -165,6 +170,9 @@ def test_separator_line_of_excel(write: Callable[..., Path]) -> None:
         ("a.csv", "id,smiles\n\n,\n", "0 rows"),
         ("a.csv", "id,structure\na,CC\n", "id, structure"),
         ("a.csv", "smiles,SMILES\nC,C\n", "two columns"),
+        ("a.csv", 'id,"smiles\na,C\n', "row 1: a quotation mark"),
+        ("a.csv", "x" * 200_000 + ",smiles\na,C\n", "row 1"),
+        ("a.csv", "x" * 2_000_000 + ",smiles\na,C\n", "row 1"),
         ("a.csv", b"PK\x03\x04rest", "Excel"),
         ("a.csv", b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1", "save it as .xlsx"),
         ("a.csv", "id,smiles\na,CC(=O)O\n".encode("utf-16-le"), "UTF-16"),
@@ -218,6 +226,14 @@ def test_any_bytes_give_records_or_one_line(tmp_path: Path, content: bytes, exte
         assert len(str(problem).splitlines()) == 1
     else:
         assert records
+
+
+@settings(suppress_health_check=[HealthCheck.function_scoped_fixture], max_examples=200, deadline=None)
+@given(st.text(alphabet='",;\t\n\r aC=O', max_size=60))
+def test_any_marks_leave_the_last_row_readable(tmp_path: Path, middle: str) -> None:
+    path = tmp_path / "marks.csv"
+    path.write_text(f"id,smiles\n{middle}\n" + "b,OC=O\n" * 60, encoding="utf-8", newline="")
+    assert brief(read(path))[-1] == ("b", "OC=O")
 
 
 # Workbooks

@@ -9,6 +9,7 @@ from qsar.commands.decision_options import (
     Acids,
     Row,
     add_acid_arguments,
+    check_outputs,
     not_negative,
     number,
     numbered,
@@ -18,6 +19,7 @@ from qsar.commands.decision_options import (
     write_table,
 )
 from qsar.errors import UserError
+from qsar.progress import progress
 
 if TYPE_CHECKING:
     from qsar.decisions.buffer import BufferResult, Recipe
@@ -98,14 +100,18 @@ def run(args: argparse.Namespace) -> int:
         raise UserError("--ionic-strength: the Davies equation is used from 0 to 0.5 mol/L only")
     if args.acid is not None and args.salt is not None and args.acid + args.salt == 0.0:
         raise UserError("--acid and --salt are both zero; there is no buffer without either")
+    check_outputs(args)
     acids = Acids(args)
     results = []
-    for acid in acids.all():
-        try:
-            recipe = _recipe(acid, args)
-            results.append(make_buffer(acid, recipe, args.tolerance, args.ph, args.risk))
-        except ValueError as problem:
-            acids.refuse(acid.name, str(problem))
+    found = acids.all()
+    with progress(lambda: len(found), "acids") as advance:
+        for acid in found:
+            try:
+                recipe = _recipe(acid, args)
+                results.append(make_buffer(acid, recipe, args.tolerance, args.ph, args.risk))
+            except ValueError as problem:
+                acids.refuse(acid.name, str(problem))
+            advance(1)
     for position, result in enumerate(results):
         if position:
             print()

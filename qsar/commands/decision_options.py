@@ -252,7 +252,11 @@ def clean(text: str) -> str:
 def show(text: str, indent: str = "") -> None:
     """Print a sentence for people, wrapped."""
     print(
-        "\n".join(textwrap.wrap(clean(text), _WIDTH, initial_indent=indent, subsequent_indent=indent or "  "))
+        "\n".join(
+            textwrap.wrap(
+                clean(text), _WIDTH, initial_indent=indent, subsequent_indent=" " * len(indent) or "  "
+            )
+        )
     )
 
 
@@ -278,6 +282,24 @@ def show_acid(acid: AcidSteps) -> None:
         show(note, "  · ")
 
 
+def check_outputs(args: argparse.Namespace) -> None:
+    """Refuse outputs that cannot be written before any work is done.
+
+    Raises
+    ------
+    UserError
+        For an unknown extension or a folder that does not exist.
+    """
+    from qsar.files import check_target
+
+    for target, known in ((args.output, tuple(_WRITERS)), (args.plot, (".png", ".svg"))):
+        if target is None:
+            continue
+        if target.suffix.lower() not in known:
+            raise UserError(f"cannot write {target}: the extension must be one of {', '.join(known)}")
+        check_target(target)
+
+
 def write_table(target: Path, columns: Sequence[str], rows: Sequence[Row]) -> None:
     """Write rows as CSV, XLSX or JSON by extension, whole or not at all; numbers keep every digit.
 
@@ -288,14 +310,9 @@ def write_table(target: Path, columns: Sequence[str], rows: Sequence[Row]) -> No
     """
     from qsar.files import atomic_path
 
-    kinds: dict[str, Callable[[Path, Sequence[str], Sequence[Row]], None]] = {
-        ".csv": _write_csv,
-        ".json": _write_json,
-        ".xlsx": _write_xlsx,
-    }
-    write = kinds.get(target.suffix.lower())
+    write = _WRITERS.get(target.suffix.lower())
     if write is None:
-        raise UserError(f"cannot write {target}: the extension must be one of {', '.join(sorted(kinds))}")
+        raise UserError(f"cannot write {target}: the extension must be one of {', '.join(_WRITERS)}")
     with atomic_path(target) as temporary:
         write(temporary, columns, rows)
 
@@ -337,6 +354,13 @@ def _write_xlsx(path: Path, columns: Sequence[str], rows: Sequence[Row]) -> None
     for row in rows:
         sheet.append([cell(row[c]) for c in columns])
     book.save(path)
+
+
+_WRITERS: dict[str, Callable[[Path, Sequence[str], Sequence[Row]], None]] = {
+    ".csv": _write_csv,
+    ".json": _write_json,
+    ".xlsx": _write_xlsx,
+}
 
 
 def numbered(target: Path, position: int, total: int) -> Path:

@@ -10,6 +10,7 @@ from qsar.commands.decision_options import (
     Acids,
     Row,
     add_acid_arguments,
+    check_outputs,
     fraction,
     not_negative,
     number,
@@ -22,6 +23,7 @@ from qsar.commands.decision_options import (
     write_table,
 )
 from qsar.errors import UserError
+from qsar.progress import progress
 
 if TYPE_CHECKING:
     from qsar.decisions.speciation import Speciation
@@ -96,12 +98,15 @@ def run(args: argparse.Namespace) -> int:
             f"--from-ph, --to-ph and --ph-step make {points:.0f} points; 1 to {_MOST_POINTS} are possible"
         )
     grid = args.from_ph + args.ph_step * np.arange(int(points + 1e-6) + 1)
+    check_outputs(args)
     acids = Acids(args)
     results = []
-    for acid in acids.all():
-        with refusals():
+    found = acids.all()
+    with refusals(), progress(lambda: len(found), "acids") as advance:
+        for acid in found:
             log_p = log_p_of(acid, args.log_p)
             results.append(speciation(acid, grid, args.ionic_strength, args.temperature, log_p))
+            advance(1)
     for position, result in enumerate(results):
         if position:
             print()

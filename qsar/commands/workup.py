@@ -11,6 +11,7 @@ from qsar.commands.decision_options import (
     Acids,
     Row,
     add_acid_arguments,
+    check_outputs,
     fraction,
     not_negative,
     number,
@@ -23,6 +24,7 @@ from qsar.commands.decision_options import (
     write_table,
 )
 from qsar.errors import UserError
+from qsar.progress import progress
 
 if TYPE_CHECKING:
     from qsar.decisions.bases import Base
@@ -139,20 +141,18 @@ def run(args: argparse.Namespace) -> int:
         For amounts out of range or an output that cannot be written.
     """
     from qsar.decisions.bases import BASES, base_named
-    from qsar.decisions.steps import UnusableAcid
     from qsar.decisions.workup import plan_workup
 
+    check_outputs(args)
     acids = Acids(args)
     with refusals():
         bases = [base_named(text) for text in args.base] if args.base else list(BASES)
     usable = _with_log_p(acids, args)
     results: list[Workup] = []
-    for acid, log_p in usable:
-        try:
-            with refusals():
-                results.append(plan_workup(acid, log_p, _job(acid, args), bases, args.risk))
-        except UnusableAcid as problem:
-            acids.refuse(acid.name, str(problem))
+    with refusals(), progress(lambda: len(usable), "acids") as advance:
+        for acid, log_p in usable:
+            results.append(plan_workup(acid, log_p, _job(acid, args), bases, args.risk))
+            advance(1)
     for position, result in enumerate(results):
         if position:
             print()
@@ -218,6 +218,7 @@ def _job(acid: AcidSteps, args: argparse.Namespace) -> Extraction:
 
 def _show(result: Workup) -> None:
     from qsar.decisions.workup import gentler_alternative
+    from qsar.decisions.worth_measuring import say_probability
 
     job = result.extraction
     show_acid(result.acid)
@@ -258,7 +259,10 @@ def _show(result: Workup) -> None:
         show("No base of this list is safe at the accepted risk without a measurement.")
     elif result.safe is not result.chosen:
         wrong = 1.0 - result.safe.probability_sufficient
-        show(f"Without a measurement take {result.safe.base.name}: wrong with probability {wrong:.3f}.")
+        show(
+            f"Without a measurement take {result.safe.base.name}: wrong with probability "
+            f"{say_probability(wrong)}."
+        )
 
 
 def _two_acids(results: Sequence[Workup], args: argparse.Namespace) -> None:
@@ -298,8 +302,8 @@ def _show_notes(results: Sequence[Workup], bases: Sequence[Base]) -> None:
         show(CARBONIC_NOTE)
     if any("Crippen" in result.log_p.label for result in results):
         show(
-            "An estimated log P may be off by 0.7, which moves every flip by as much; it is not in the "
-            "intervals."
+            "An estimated log P is for octanol and may be off by 0.7, which moves every flip by as much; "
+            "that is not in the intervals."
         )
     for note in dict.fromkeys(note for result in results for note in result.notes):
         show(f"{note[0].upper()}{note[1:]}.")

@@ -179,7 +179,7 @@ def _from_prediction(name: str, prediction: Prediction, coverage: float, charge:
             high.append(value + half)
             notes.append(
                 f"step {step.step}: measured {value:.2f} from the reference table is used, standard "
-                f"uncertainty {sd:g} (predicted {step.pka:.2f})"
+                f"uncertainty {sd:g}{_without(step.pka_without)}"
             )
             continue
         pka.append(float(step.pka))
@@ -188,7 +188,7 @@ def _from_prediction(name: str, prediction: Prediction, coverage: float, charge:
         if step.domain != "inside":
             why = "; ".join(step.reasons)
             notes.append(
-                f"step {step.step}: {step.domain} the model's domain, the interval may be too narrow ({why})"
+                f"step {step.step}: verdict {step.domain}, so the interval may be too narrow ({why})"
             )
     origin = "measured" if measured == len(pka) else "predicted"
     return AcidSteps(
@@ -202,6 +202,10 @@ def _from_prediction(name: str, prediction: Prediction, coverage: float, charge:
         origin,
         tuple(notes),
     )
+
+
+def _without(value: float | None) -> str:
+    return "" if value is None else f"; predicted without it {value:.2f}"
 
 
 def _charge_note(acid: AcidSteps, structure: Acid) -> tuple[str, ...]:

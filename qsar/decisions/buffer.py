@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -24,6 +24,7 @@ from qsar.decisions.worth_measuring import (
 Floats = NDArray[np.float64]
 
 _DRAWS = 1000
+_SHARES, _ZOOMS = 65, 4  # a ratio to one part in ten million
 _SCAN = np.arange(-2.0, 2.0 + 1e-9, 0.02)
 RANGE_CAPACITY = float(np.log(10.0)) * 10.0 / 121.0
 """Capacity of a one-step buffer one unit from its pKa, per total concentration: where its use ends."""
@@ -118,17 +119,20 @@ def check_recipe(acid: AcidSteps, recipe: Recipe) -> None:
         raise ValueError(f"{acid.name}: step {recipe.step} is not among its {len(acid.pka)}")
 
 
-def _solutes(recipe: Recipe, pka: Floats, charge: int) -> list[Solute]:
+def _solutes(
+    recipe: Recipe, acid_m: float | Floats, salt_m: float | Floats, pka: Floats, charge: int
+) -> list[Solute]:
     """The acid, the counter-ions of acid and salt form, and the strong base or acid."""
-    solutes = [solute("acid", recipe.total_m, pka, charge)]
     acid_form, salt_form = charge - (recipe.step - 1), charge - recipe.step
-    counter = -(acid_form * recipe.acid_m + salt_form * recipe.salt_m) + recipe.strong_base_m
-    # Two columns rather than the difference, so that the ionic strength counts both counter-ions.
-    cations = sum(max(-z, 0) * c for z, c in ((acid_form, recipe.acid_m), (salt_form, recipe.salt_m)))
-    cations += max(recipe.strong_base_m, 0.0)
-    solutes.append(solute("cation", cations, charge=1))
-    solutes.append(solute("anion", cations - counter, charge=-1))
-    return solutes
+    forms = ((acid_form, acid_m), (salt_form, salt_m))
+    # Cations beside anions rather than their difference, so that the ionic strength counts both.
+    cations = max(recipe.strong_base_m, 0.0) + sum(max(-z, 0) * c for z, c in forms)
+    anions = max(-recipe.strong_base_m, 0.0) + sum(max(z, 0) * c for z, c in forms)
+    return [
+        solute("acid", recipe.total_m, pka, charge),
+        solute("cation", cations, charge=1),
+        solute("anion", anions, charge=-1),
+    ]
 
 
 def solve_recipe(recipe: Recipe, pka: Floats, charge: int) -> tuple[Equilibrium, list[Solute]]:
@@ -139,7 +143,7 @@ def solve_recipe(recipe: Recipe, pka: Floats, charge: int) -> tuple[Equilibrium,
     ValueError
         When the buffer's own ions exceed the prescribed ionic strength.
     """
-    solutes = _solutes(recipe, pka, charge)
+    solutes = _solutes(recipe, recipe.acid_m, recipe.salt_m, pka, charge)
     solved = solve(solutes, recipe.temperature_c, recipe.ionic_strength_m)
     if recipe.ionic_strength_m is not None:
         own = float(solved.own_ionic_strength_m.max())
@@ -291,25 +295,18 @@ def salt_for(acid: AcidSteps, recipe: Recipe, wanted_ph: float) -> Recipe:
         When no ratio of the two forms of this step makes that pH.
     """
     check_recipe(acid, recipe)
-
-    def with_share(share: float) -> Recipe:
-        total = recipe.total_m
-        return Recipe(
-            total * (1.0 - share), total * share, recipe.step, recipe.strong_base_m,
-            recipe.ionic_strength_m, recipe.temperature_c,
-        )  # fmt: skip
-
-    def made(share: float) -> float:
-        return float(solve_recipe(with_share(share), np.array([acid.pka]), acid.charge_of_acid_form)[0].ph[0])
-
-    lowest, highest = made(0.0), made(1.0)
-    if not lowest <= wanted_ph <= highest:
-        raise ValueError(
-            f"{acid.name}: acid and salt of step {recipe.step} at {recipe.total_m:g} mol/L in all make pH "
-            f"{lowest:.2f} to {highest:.2f}, not {wanted_ph:.2f}; take another step or another acid"
-        )
+    total, pka = recipe.total_m, np.array([acid.pka])
     low, high = 0.0, 1.0
-    for _ in range(40):
-        middle = 0.5 * (low + high)
-        low, high = (middle, high) if made(middle) < wanted_ph else (low, middle)
-    return with_share(0.5 * (low + high))
+    for _ in range(_ZOOMS):
+        share = np.linspace(low, high, _SHARES)
+        solutes = _solutes(recipe, total * (1.0 - share), total * share, pka, acid.charge_of_acid_form)
+        made = solve(solutes, recipe.temperature_c, recipe.ionic_strength_m).ph
+        if high - low == 1.0 and not made[0] <= wanted_ph <= made[-1]:
+            raise ValueError(
+                f"{acid.name}: acid and salt of step {recipe.step} at {total:g} mol/L in all make pH "
+                f"{made[0]:.2f} to {made[-1]:.2f}, not {wanted_ph:.2f}; take another step or another acid"
+            )
+        right = int(np.clip(np.searchsorted(made, wanted_ph), 1, _SHARES - 1))
+        low, high = float(share[right - 1]), float(share[right])
+    found = 0.5 * (low + high)
+    return replace(recipe, acid_m=total * (1.0 - found), salt_m=total * found)

@@ -18,7 +18,10 @@ Floats = NDArray[np.float64]
 
 _LN10 = float(np.log(10.0))
 _PH_RANGE = (-3.0, 17.0)
-_BISECTIONS = 60
+_BISECTIONS = 16
+_POLISHINGS = 60
+_NEIGHBOURHOOD = 0.1
+_STEP = 1e-13
 _ROUNDS = 200
 _TOLERANCE = 1e-10
 
@@ -145,15 +148,43 @@ def _net_charge(solutes: Sequence[Solute], ph: Floats, davies: Floats, pkw: floa
     return np.asarray(net)
 
 
-def _bisect(solutes: Sequence[Solute], davies: Floats, pkw: float, low: Floats, high: Floats) -> Floats:
-    """The pH at which the charges cancel; the net charge falls steadily with pH at fixed ionic strength."""
-    for _ in range(_BISECTIONS):
+def _root(solutes: Sequence[Solute], davies: Floats, pkw: float, near: Floats | None) -> Floats:
+    """The pH at which the charges cancel; the net charge falls steadily with pH at fixed ionic strength.
+
+    Bisection to a narrow bracket, or the neighbourhood of an earlier solution, then the Illinois variant of
+    the false position (Dowell & Jarratt, *BIT* **1971**, 11, 168), which never leaves the bracket.
+    """
+
+    def net(ph: Floats) -> Floats:
+        return _net_charge(solutes, ph, davies, pkw)
+
+    low, high = (np.full(davies.shape, edge) for edge in _PH_RANGE)
+    halvings = _BISECTIONS
+    if near is not None:
+        left, right = near - _NEIGHBOURHOOD, near + _NEIGHBOURHOOD
+        inside = (net(left) > 0.0) & (net(right) <= 0.0)
+        low, high = np.where(inside, left, low), np.where(inside, right, high)
+        halvings = 0 if bool(inside.all()) else _BISECTIONS
+    for _ in range(halvings):
         middle = 0.5 * (low + high)
-        positive = _net_charge(solutes, middle, davies, pkw) > 0.0
+        positive = net(middle) > 0.0
         low, high = np.where(positive, middle, low), np.where(positive, high, middle)
-        if float(np.max(high - low)) < 1e-12:
+    above, below, ph, side = net(low), net(high), low, np.zeros(low.shape)
+    for _ in range(_POLISHINGS):
+        span = above - below
+        share = np.where(span > 0.0, above / np.where(span > 0.0, span, 1.0), 0.5)
+        previous, ph = ph, low + share * (high - low)
+        if float(np.max(np.abs(ph - previous))) < _STEP:
             break
-    return 0.5 * (low + high)
+        value = net(ph)
+        positive = value > 0.0
+        # The end that stays put twice is given half its weight, or it would never move.
+        below = np.where(positive & (side > 0), 0.5 * below, below)
+        above = np.where(~positive & (side < 0), 0.5 * above, above)
+        low, above = np.where(positive, ph, low), np.where(positive, value, above)
+        high, below = np.where(positive, high, ph), np.where(positive, below, value)
+        side = np.where(positive, 1.0, -1.0)
+    return ph
 
 
 def solve(
@@ -194,22 +225,20 @@ def solve(
     pkw = water_pkw(temperature_c)
     fixed = None if ionic_strength_m is None else np.full(n, float(ionic_strength_m))
     strength = np.zeros(n) if fixed is None else fixed
-    low, high = np.full(n, _PH_RANGE[0]), np.full(n, _PH_RANGE[1])
-    previous = np.full(n, np.nan)
+    near: Floats | None = None
     for _ in range(_ROUNDS):
         # Beyond the reach of Davies the coefficients stay at the limit; `beyond_davies` tells.
         davies = davies_term(
             strength if fixed is not None else np.minimum(strength, DAVIES_LIMIT_M), temperature_c
         )
-        ph = _bisect(solutes, davies, pkw, low, high)
+        ph = _root(solutes, davies, pkw, near)
         hydrogen, hydroxide = _water_ions(ph, davies, pkw)
         states = {item.name: item.in_water(ph, davies) for item in solutes}
         own = 0.5 * (hydrogen + hydroxide + sum(states[item.name] @ item.charges**2 for item in solutes))
-        settled = bool(np.all(np.abs(ph - previous) < _TOLERANCE))
+        settled = near is not None and bool(np.all(np.abs(ph - near) < _TOLERANCE))
         if fixed is not None or settled:
             return Equilibrium(ph, strength if fixed is not None else own, own, states, hydrogen, hydroxide)
-        previous, strength = ph, own
-        low, high = np.full(n, _PH_RANGE[0]), np.full(n, _PH_RANGE[1])
+        near, strength = ph, own
     raise NotConverged("pH and ionic strength did not settle; check the amounts")
 
 

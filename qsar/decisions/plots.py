@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from qsar.decisions.speciation import charge_label
+from qsar.decisions.worth_measuring import say_probability
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -155,7 +156,7 @@ def window_figure(window: Window) -> Figure:
     ax.axvline(window.best_ph, color="black", linewidth=1, linestyle=":")
     state = "open (grey)" if window.exists else "shut"
     ax.set_title(
-        f"window {state}, exists with probability {window.probability_exists:.2f}; dotted: pH "
+        f"window {state}, exists with probability {say_probability(window.probability_exists)}; dotted: pH "
         f"{window.best_ph:.2f}",
         fontsize=9,
         loc="left",

@@ -336,8 +336,10 @@ def _sentences(w: Window, risk: float) -> tuple[str, ...]:
             f"{dry} in the organic layer."
         )
     now = w.dry.acid.pka[0] - w.wet.acid.pka[0]
+    # All steps of an acid are moved together, so the limit is stated for the first ones.
+    which = "first " if max(len(w.dry.acid.pka), len(w.wet.acid.pka)) > 1 else ""
     flip = (
-        f"The window is open while the pKa of {dry} exceeds that of {wet} by more than "
+        f"The window is open while the {which}pKa of {dry} exceeds that of {wet} by more than "
         f"{w.flips_when_difference_below:.2f}; now {now:.2f}."
     )
     course = "work at that pH" if w.exists else "take it that there is no window"

@@ -14,7 +14,9 @@ _COLUMNS = columns(
     "cations cation_g50 cation_g75 cation_inverse cation_alpha "
     "anions anion_g50 anion_g75 anion_inverse anion_nearest "
     "carboxyls carboxyl_g40 carboxyl_g70 carboxyl_nearest carboxyl_path_bulk carboxyl_path_quaternary "
-    "carboxyl_path_unsaturated carboxyl_cis carboxyl_geminal net_charge",
+    "carboxyl_path_unsaturated carboxyl_cis carboxyl_geminal net_charge "
+    "cation_in_ring cation_pairs anion_path_bulk anion_path_quaternary geminal_bulk geminal_bulk_anion geminal_small_ring "
+    "geminal_small_ring_anion anion_cis vicinal_splay vicinal_splay_anion"
 )
 
 
@@ -57,7 +59,68 @@ def _compute(view: SiteView) -> list[float]:
         cis,
         float(sum(t.bonds == 1 for t in acids)),
         float(len(cations) - len(anions)),
+        float(sum(view.alpha_system is t for t in cations)),
+        float(len(cations) * (len(cations) - 1)),
+        *_between(view, neutral, carboxylates),
     ]
+
+
+def _between(view: SiteView, neutral: list[Term], ionised: list[Term]) -> list[float]:
+    """What crowds or holds two carboxyl groups together, apart for COOH (it donates) and COO- (it accepts).
+
+    Alkyl groups on the carbon between two carboxyl groups press them together (Thorpe and Ingold, J. Chem. Soc. 1915,
+    107, 1080), which strengthens the hydrogen bond of the monoanion: first step down, second step up.
+    """
+    bulk = quaternary = cis = splay_neutral = splay_anion = 0.0
+    for t in ionised:
+        b, q, _ = _path(view, t)
+        weight = 0.5 ** max(t.bonds - 2, 0)
+        bulk += b * weight
+        quaternary += q * weight
+        cis += _cis(view, t)
+        splay_anion += _splay(view, t)
+    for t in neutral:
+        splay_neutral += _splay(view, t)
+    crowd, ring = _geminal_crowd(view)
+    geminal = float(any(t.bonds == 1 for t in neutral))
+    geminal_anion = float(any(t.bonds == 1 for t in ionised))
+    return [
+        bulk,
+        quaternary,
+        crowd * geminal,
+        crowd * geminal_anion,
+        ring * geminal,
+        ring * geminal_anion,
+        cis,
+        splay_neutral,
+        splay_anion,
+    ]
+
+
+def _geminal_crowd(view: SiteView) -> tuple[float, float]:
+    """Branching of the alkyl groups on the alpha carbon, and 1 where it is in a three- or 1/2 in a four-membered ring."""
+    if view.alpha < 0 or view.molecule.unsaturated[view.alpha]:
+        return 0.0, 0.0
+    groups = [b for b in view.carbons_on(view.alpha) if view.term_of.get(b) is None]
+    size = view.graph.ring_size[view.alpha]
+    crowd = float(len(groups) == 2) + 0.5 * sum(len(view.carbons_on(b)) for b in groups if not size)
+    return crowd, {3: 1.0, 4: 0.5}.get(size, 0.0)
+
+
+def _splay(view: SiteView, term: Term) -> float:
+    """How far a small ring spreads two carboxyl groups that its double bond holds cis, 0 for a six-membered one.
+
+    The outer angle of a double bond in an n-membered ring is larger the smaller the ring, which makes the
+    hydrogen bond between vicinal groups straighter.
+    """
+    graph, alpha = view.graph, view.alpha
+    if alpha < 0 or not view.molecule.unsaturated[alpha] or term.bonds != 2:
+        return 0.0
+    carrier = next((b for b in graph.neighbours[term.anchor] if view.distance[b] == 2 and b in graph.neighbours[alpha]), -1)
+    if carrier < 0 or not graph.order(alpha, carrier) > 1.0:
+        return 0.0
+    sizes = [len(ring) for ring in graph.rings if alpha in ring and carrier in ring]
+    return float(max(6 - min(sizes), 0)) if sizes else 0.0
 
 
 def _path(view: SiteView, term: Term) -> tuple[float, float, float]:

@@ -14,7 +14,7 @@ from qsar.descriptors.view import SiteView
 
 _COLUMNS = columns(
     "ortho_count ortho_bulk ortho_largest ortho_both ortho_alkyl ortho_halogen ortho_fused ortho_ether ortho_nitro "
-    "ortho_carbonyl alpha_bulk beta_bulk atoms_at_three atoms_at_four atoms_at_five"
+    "ortho_carbonyl ortho_ring_carbonyl alpha_bulk beta_bulk atoms_at_three atoms_at_four atoms_at_five"
 )
 _HALOGEN = ("fluoro", "chloro", "bromo", "iodo")
 _CARBONYL = ("ketone", "aldehyde", "alkoxycarbonyl", "carbamoyl", "carboxyl", "carboxylate", "phenyl", "sulfonyl")
@@ -29,9 +29,9 @@ def alkyl_bulk(view: SiteView, atom: int) -> float:
 def _ortho(view: SiteView) -> list[float]:
     system = view.alpha_system
     if system is None:
-        return [0.0] * 10
+        return [0.0] * 11
     bulks = []
-    alkyl = halogen = ether = nitro = carbonyl = 0.0
+    alkyl = halogen = ether = nitro = carbonyl = ring_carbonyl = 0.0
     for position, c, atom in ring_substituents(view, system, view.alpha):
         if position != 1 or atom == view.site:
             continue
@@ -42,6 +42,7 @@ def _ortho(view: SiteView) -> list[float]:
         ether += float(c.kind in ("alkoxy", "aryloxy", "acyloxy", "alkylthio", "arylthio"))
         nitro += float(c.kind == "nitro")
         carbonyl += float(c.kind in _CARBONYL)
+        ring_carbonyl += float(c.kind == "ring_carbonyl")  # takes the COOH proton in a hydrogen bond
     members = set(system.atoms)
     fused = sum(
         1.0
@@ -59,6 +60,7 @@ def _ortho(view: SiteView) -> list[float]:
         ether,
         nitro,
         carbonyl,
+        ring_carbonyl,
     ]
 
 

@@ -11,6 +11,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from functools import cached_property
 
+from qsar.basicity import pyridinium_pka
 from qsar.constants.functional_groups import FunctionalGroup, functional_groups
 from qsar.graph import Graph
 from qsar.groups import WITHDRAWING, Group, perceive
@@ -56,7 +57,7 @@ class Molecule:
 
     def __init__(self, graph: Graph) -> None:
         self.graph = graph
-        self.groups: list[Group] = perceive(graph)
+        self.groups: list[Group] = _with_basicity(graph, perceive(graph))
         self.set_apart: set[int] = set()
         self.withdrawing: list[tuple[Group, int]] = []
         self.carboxyls: dict[int, Group] = {}
@@ -78,6 +79,22 @@ class Molecule:
         self.unsaturated = [not graph.saturated(a) for a in range(n)]
         for a in self.set_apart:
             self.unsaturated[a] = False
+
+
+_PROTONATED_ABOVE = 1.5  # a ring nitrogen weaker than this is neutral where the carboxyl proton leaves
+
+
+def _with_basicity(graph: Graph, groups: list[Group]) -> list[Group]:
+    """Take the proton from ring nitrogens that substituents have made too weak a base."""
+    if not any(group.kind == "pyridinium" for group in groups):
+        return groups
+    group_of = {a: group for group in reversed(groups) for a in group.atoms}
+    return [
+        Group("heteroaryl", group.atoms)
+        if group.kind == "pyridinium" and pyridinium_pka(graph, group, group_of) < _PROTONATED_ABOVE
+        else group
+        for group in groups
+    ]
 
 
 def _saturated_carrier(graph: Graph, group: Group) -> int:

@@ -20,10 +20,10 @@ class BoostingSettings:
     """Settings of the booster; names as in scikit-learn."""
 
     max_iter: int = 150
-    learning_rate: float = 0.06
-    max_leaf_nodes: int = 8
-    min_samples_leaf: int = 5
-    l2_regularization: float = 1.0
+    learning_rate: float = 0.03
+    max_leaf_nodes: int = 5
+    min_samples_leaf: int = 15
+    l2_regularization: float = 5.0
     max_features: float = 0.3
 
 

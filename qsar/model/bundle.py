@@ -9,7 +9,9 @@ from __future__ import annotations
 import hashlib
 import io
 import json
+import math
 import zipfile
+import zlib
 from dataclasses import asdict
 from pathlib import Path
 from typing import Any
@@ -22,7 +24,7 @@ from qsar.errors import UserError
 from qsar.files import atomic_path
 from qsar.model.boosting import BoostingSettings, Trees
 from qsar.model.domain import Domain
-from qsar.model.intervals import Calibration
+from qsar.model.intervals import CLASSES, EVIDENCE, Calibration
 from qsar.model.kernel import KernelSettings, Scaling
 from qsar.model.library import Library
 from qsar.model.members import Members, Settings
@@ -143,12 +145,13 @@ def read_card(folder: Path) -> dict[str, Any]:
     """
     path = folder / CARD
     try:
+        _check_inside(folder, path)
         if path.stat().st_size > 4 << 20:
             raise UserError(f"{path}: larger than any card; not a model of this program")
         card = json.loads(path.read_text(encoding="utf-8"))
     except OSError as error:
         raise UserError(f"no model in {folder}: {CARD} cannot be read ({error.strerror})") from error
-    except ValueError as error:
+    except (ValueError, RecursionError) as error:
         raise UserError(f"{path}: damaged, not JSON; copy the bundle again") from error
     if not isinstance(card, dict) or card.get("kind") != KIND:
         raise UserError(f"{path}: not a model of this program")
@@ -169,11 +172,37 @@ def load(folder: Path) -> Model:
         With one line if it is missing, damaged, altered, foreign or too new.
     """
     card = read_card(folder)
+    _check_inside(folder, folder / ARRAYS)
     arrays = _read_arrays(folder / ARRAYS, str(card.get("arrays_sha256", "")))
     try:
         return _assemble(card, arrays)
-    except (KeyError, TypeError, ValueError, IndexError) as error:
+    except (KeyError, TypeError, ValueError, IndexError, AttributeError, OverflowError) as error:
         raise UserError(f"{folder}: the bundle does not fit together ({error}); train or copy it again") from error
+
+
+def _check_inside(folder: Path, path: Path) -> None:
+    """Refuse a file of a bundle that is a link to somewhere else."""
+    if path.resolve().parent != folder.resolve():
+        raise UserError(f"{path}: leads out of the folder of the bundle; not loaded")
+
+
+def _check_archive(path: Path, archive: zipfile.ZipFile) -> None:
+    """Refuse other names, and contents larger than they say, before anything is unpacked."""
+    names = [name.removesuffix(".npy") for name in archive.namelist()]
+    if sorted(names) != sorted(ARRAY_TYPES):
+        odd = ", ".join(sorted(set(names) ^ set(ARRAY_TYPES))[:3]) or "one twice"
+        raise UserError(f"{path}: does not hold the arrays of this schema ({odd}); not loaded")
+    if sum(info.file_size for info in archive.infolist()) > MOST_BYTES:
+        raise UserError(f"{path}: unpacks to more than {MOST_BYTES >> 20} MiB; not loaded")
+    for info in archive.infolist():
+        with archive.open(info) as entry:
+            if np.lib.format.read_magic(entry) != (1, 0):
+                raise UserError(f"{path}: {info.filename} is not a plain array; not loaded")
+            shape, _, dtype = np.lib.format.read_array_header_1_0(entry)
+            if dtype.hasobject:
+                raise UserError(f"{path}: {info.filename} holds pickled objects, which are never loaded")
+            if math.prod(shape) * dtype.itemsize != info.file_size - entry.tell():
+                raise UserError(f"{path}: {info.filename} says another size than it has; not loaded")
 
 
 def _read_arrays(path: Path, digest: str) -> dict[str, NDArray[Any]]:
@@ -187,15 +216,10 @@ def _read_arrays(path: Path, digest: str) -> dict[str, NDArray[Any]]:
         raise UserError(f"{path}: altered or damaged (SHA-256 differs from the card); copy the bundle again")
     try:
         with zipfile.ZipFile(io.BytesIO(data)) as archive:
-            names = {name.removesuffix(".npy") for name in archive.namelist()}
-            if names != set(ARRAY_TYPES):
-                odd = ", ".join(sorted(names ^ set(ARRAY_TYPES))[:3])
-                raise UserError(f"{path}: does not hold the arrays of this schema ({odd}); not loaded")
-            if sum(info.file_size for info in archive.infolist()) > MOST_BYTES:
-                raise UserError(f"{path}: unpacks to more than {MOST_BYTES >> 20} MiB; not loaded")
+            _check_archive(path, archive)
         with np.load(io.BytesIO(data), allow_pickle=False) as stored:
             arrays = {name: stored[name] for name in ARRAY_TYPES}
-    except (zipfile.BadZipFile, ValueError, EOFError, KeyError) as error:
+    except (zipfile.BadZipFile, zlib.error, ValueError, EOFError, KeyError, NotImplementedError, RuntimeError) as error:
         raise UserError(f"{path}: not an archive of plain arrays ({error}); not loaded") from error
     for name, (kind, dimensions) in ARRAY_TYPES.items():
         array = arrays[name]
@@ -207,6 +231,8 @@ def _read_arrays(path: Path, digest: str) -> dict[str, NDArray[Any]]:
 
 
 def _assemble(card: dict[str, Any], a: dict[str, NDArray[Any]]) -> Model:
+    if not isinstance(card["name"], str) or not card["name"].isprintable() or len(card["name"]) > 200:
+        raise ValueError("its name is not a line of text")
     if card["descriptors"] != list(NAMES):
         raise UserError(f"{card.get('name')}: made with other descriptors than this program has; train it again")
     settings = settings_from(card["settings"])
@@ -241,6 +267,8 @@ def _assemble(card: dict[str, Any], a: dict[str, NDArray[Any]]) -> Model:
         a["library_without"],
         a["library_expected"],
     )
+    if len(smiles) != len(library.pka):
+        raise ValueError("its list of measured acids has another length than their values")
     counts = {
         tuple(key): int(n) for key, n in zip(_unpack(a["domain_text"]), a["domain_counts"], strict=True)
     }
@@ -262,7 +290,9 @@ def _check_shapes(a: dict[str, NDArray[Any]], trees: Trees) -> None:
         "tree_threshold": (nodes,),
         "tree_left": (nodes,),
         "tree_right": (nodes,),
+        "tree_root": (members, a["tree_root"].shape[1]),
         "tree_baseline": (members,),
+        "scale_coefficients": (len(EVIDENCE),),
         "neighbour_weights": (free + lowers,),
         "neighbour_points": (steps, free + lowers),
         "scores": (steps,),
@@ -283,6 +313,8 @@ def _check_shapes(a: dict[str, NDArray[Any]], trees: Trees) -> None:
         raise ValueError("a tree splits on a column that does not exist")
     if a["score_member"].min() < 0 or a["score_member"].max() >= members:
         raise ValueError("a score belongs to no member")
+    if a["score_label"].min() < 0 or a["score_label"].max() >= len(CLASSES):
+        raise ValueError("a score belongs to no class of acids")
 
 
 def settings_from(stored: dict[str, Any]) -> Settings:

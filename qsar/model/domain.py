@@ -13,6 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from qsar.basicity import anilinium_pka
 from qsar.descriptors import SiteView
 from qsar.groups import CATIONIC
 
@@ -133,14 +134,10 @@ class Domain:
             elif feature[0] == "place" and n == 0 and self.counts.get(("group", feature[1]), 0):
                 level = max(level, 1)
                 reasons.append(f"no measured acid has a {label(feature[1])} group {place(feature)}; {away}")
-        for term in view.terms:
-            if term.kind in ("pyridinium", "imidazolium") or (term.kind == "amino" and view.alpha_system is not None):
-                level = max(level, 1)
-                reasons.append(
-                    "a basic ring nitrogen or aniline ionises near by; the constant is that of the form stated "
-                    "by this model, and the measured one may belong to the N-H proton"
-                )
-                break
+        basic = basic_nitrogen(view)
+        if basic:
+            level = 2
+            reasons.append(basic)
         if expected > self.outside_above:
             level = 2
             reasons.append(f"expected error {expected:.2f}, larger than for 92 % of the measured acids; {away}")
@@ -150,6 +147,25 @@ class Domain:
         if level == 0:
             reasons.append(f"close to measured acids; {away}")
         return VERDICTS[level], reasons
+
+
+def basic_nitrogen(view: SiteView) -> str:
+    """A sentence where a ring nitrogen or aniline shares the measured constants with the carboxyl group, else ""."""
+    group_of = {a: group for group in reversed(view.molecule.groups) for a in group.atoms}
+    for term in view.terms:
+        if term.kind in ("pyridinium", "imidazolium"):
+            return (
+                "a basic ring nitrogen ionises near by: the value is for the COOH of the form protonated there, and a "
+                "measured constant may belong to the N-H proton"
+            )
+        if term.kind == "amino":
+            pka = anilinium_pka(view.graph, term.anchor, group_of)
+            if pka is not None and pka > 2.0:
+                return (
+                    f"an aniline ionises near by (estimated pKa {pka:.1f}): the value is for the COOH of the form with "
+                    "a neutral amino group, and a measured constant may belong to the N-H proton"
+                )
+    return ""
 
 
 def label(kind: str) -> str:

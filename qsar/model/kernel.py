@@ -18,7 +18,8 @@ from numpy.typing import NDArray
 
 Floats = NDArray[np.float64]
 
-CLIP = 4.0  # scaled descriptors beyond this many standard deviations are taken as that far out, no further
+LEAST_DEVIATION = 0.2
+CLIP = 15.0  # scaled descriptors beyond this many standard deviations are taken as that far out, no further
 
 
 @dataclass(frozen=True)
@@ -37,9 +38,9 @@ class KernelSettings:
         Standard deviation of the model error of one edge, pKa units.
     """
 
-    length: float = 8.0
-    amplitude: float = 0.6
-    linear: float = 0.04
+    length: float = 12.0
+    amplitude: float = 0.8
+    linear: float = 0.06
     noise: float = 0.07
 
 
@@ -60,7 +61,10 @@ class Scaling:
     def of(cls, free: Floats) -> Scaling:
         """Scaling of the rows of `free`, shape (n, n_free)."""
         deviation = free.std(axis=0)
-        scale = np.divide(1.0, deviation, out=np.zeros_like(deviation), where=deviation > 1e-9)
+        # A descriptor that few acids show has a small deviation; the floor keeps it from ruling every distance.
+        scale = np.divide(
+            1.0, np.maximum(deviation, LEAST_DEVIATION), out=np.zeros_like(deviation), where=deviation > 1e-9
+        )
         return cls(free.mean(axis=0), scale)
 
     def __call__(self, free: Floats) -> Floats:

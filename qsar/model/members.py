@@ -35,14 +35,15 @@ class Settings:
         Folds within a member by which the booster sees honest residuals of the trend.
     rounds : int
         Rounds of the latent micro constants.
-    boosting_share : float
-        Share of the booster's correction that is added to the trend.
+    largest_residual : float
+        Residuals of the trend beyond this many pKa units are taken as that large, so that a few odd acids do not
+        bend the booster.
     """
 
     folds: int = 10
     inner_folds: int = 6
     rounds: int = 3
-    boosting_share: float = 0.5
+    largest_residual: float = 0.4
     seed: int = 1
     kernel: KernelSettings = field(default_factory=KernelSettings)
     boosting: BoostingSettings = field(default_factory=BoostingSettings)
@@ -83,12 +84,12 @@ class Members:
         Returns
         -------
         trend, boosted : ndarray, shape (n_members, n)
-            The trend alone and the booster's correction, already scaled by its share.
+            The trend alone and the booster's correction.
         """
         free, lowers = x[:, ~LOWERS], x[:, LOWERS]
         k = covariance(self.scaling(free), self.points, self.settings.kernel)
         trend = self.offset - self.slopes @ lowers.T + self.dual @ k.T
-        return trend, self.settings.boosting_share * self.trees.predict(x)
+        return trend, self.trees.predict(x)
 
 
 def fold_of_acids(n_acids: int, settings: Settings) -> Ints:
@@ -143,6 +144,7 @@ def fit_member(data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], s
             free[rest], lowers[rest], targets.value[~held], targets.variance[~held], settings.kernel, scaling
         )
         residual[held] = targets.value[held] - other.predict(free[targets.edge[held]], lowers[targets.edge[held]])
+    residual = np.clip(residual, -settings.largest_residual, settings.largest_residual)
     booster = fit_booster(data.x[targets.edge], residual, targets.share, LOWERS, settings.boosting, seed)
     dual = np.zeros(len(data.x))
     np.add.at(dual, targets.edge, trend.dual)

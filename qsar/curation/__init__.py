@@ -1,0 +1,1 @@
+"""Measured constants from outside: which rows can be used, which cannot and why."""

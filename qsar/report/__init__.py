@@ -1,0 +1,1 @@
+"""Plots and pages that show what the table and the model hold."""

@@ -1,0 +1,1 @@
+"""Judging a model: splits, metrics, baselines, randomisation, and acids measured elsewhere."""
