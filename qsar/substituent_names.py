@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Collection
 from functools import lru_cache
 
@@ -20,8 +21,11 @@ _NAMES = """
 *OC(C)(C)C tert-butoxy|*S sulfanyl|*SC methylsulfanyl|*SCC ethylsulfanyl|*SSC methyldisulfanyl|*SC#N thiocyanato
 *N=C=S isothiocyanato|*OC=O formyloxy|*OC(C)=O acetoxy|*SC(C)=O acetylsulfanyl|*NC=O formamido|*NC(C)=O acetamido
 *NC(N)=O ureido|*NC(=O)OC methoxycarbonylamino|*NC(=O)OC(C)(C)C tert-butoxycarbonylamino
-*N amino|*[NH3+] ammonio|*NC methylamino|*N(C)C dimethylamino|*[N+](C)(C)C trimethylammonio|*NN hydrazinyl
-*N(CC)CC diethylamino|*NC(=N)N guanidino|*C(=N)N amidino|*C=O formyl|*C(C)=O acetyl|*C(=O)CC propanoyl
+*N amino|*[NH3+] ammonio|*NC methylamino|*[NH2+]C methylammonio|*N(C)C dimethylamino|*[NH+](C)C dimethylammonio
+*N(CC)CC diethylamino|*[NH+](CC)CC diethylammonio|*[N+](C)(C)C trimethylammonio|*NN hydrazinyl
+*[NH2+]CC ethylammonio|*[NH2+]C(C)C isopropylammonio|*[NH2+]C(C)(C)C tert-butylammonio
+*[NH+]1CCCCC1 piperidinio|*[NH+]1CCOCC1 morpholinio|*[NH+]1CCCC1 pyrrolidinio|*[NH+]1CC[NH2+]CC1 piperazinediio
+*NC(=N)N guanidinio|*C(=N)N amidinio|*C=O formyl|*C(C)=O acetyl|*C(=O)CC propanoyl
 *C(=O)O carboxy|*C(=O)[O-] carboxylate|*C(=O)OC methoxycarbonyl|*C(=O)OCC ethoxycarbonyl|*C(N)=O carbamoyl
 *C(=O)NC methylcarbamoyl|*C(=O)N(C)C dimethylcarbamoyl|*S(C)=O methylsulfinyl|*S(C)(=O)=O methylsulfonyl
 *S(N)(=O)=O sulfamoyl|*S(=O)(=O)O sulfonate|*S(=O)(=O)N(C)C dimethylsulfamoyl|*NS(C)(=O)=O methylsulfonamido
@@ -56,7 +60,9 @@ def _names() -> dict[str, str]:
     return table
 
 
-def unit_kind(mol: Chem.Mol, unit: Collection[int], inner: Collection[int], ionised: Collection[int]) -> str:
+def unit_kind(
+    mol: Chem.Mol, unit: Collection[int], inner: Collection[int], ionised: Collection[int], protonated: Collection[int]
+) -> str:
     """Canonical SMILES of a unit, ``*`` for each bond towards the carboxyl group, H for whatever it carries.
 
     Parameters
@@ -67,6 +73,8 @@ def unit_kind(mol: Chem.Mol, unit: Collection[int], inner: Collection[int], ioni
         Atoms of the parent, or of the unit that carries this one.
     ionised : collection of int
         Carboxyl carbons without their proton.
+    protonated : collection of int
+        Amine nitrogens with a proton more than drawn.
 
     Returns
     -------
@@ -77,7 +85,8 @@ def unit_kind(mol: Chem.Mol, unit: Collection[int], inner: Collection[int], ioni
     for a in sorted(unit):
         old = mol.GetAtomWithIdx(a)
         atom = Chem.Atom(old.GetAtomicNum())
-        atom.SetFormalCharge(old.GetFormalCharge())
+        extra = int(a in protonated)
+        atom.SetFormalCharge(old.GetFormalCharge() + extra)
         atom.SetIsAromatic(old.GetIsAromatic())
         atom.SetNoImplicit(True)
         lost = sum(
@@ -85,7 +94,7 @@ def unit_kind(mol: Chem.Mol, unit: Collection[int], inner: Collection[int], ioni
             for bond in old.GetBonds()
             if bond.GetOtherAtomIdx(a) not in unit and bond.GetOtherAtomIdx(a) not in inner
         )
-        atom.SetNumExplicitHs(old.GetTotalNumHs() + lost)
+        atom.SetNumExplicitHs(old.GetTotalNumHs() + lost + extra)
         index[a] = fragment.AddAtom(atom)
     for bond in mol.GetBonds():
         ends = [bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()]
@@ -116,16 +125,8 @@ def _whole(bond: Chem.Bond) -> int:
 def unit_name(kind: str, graph: Graph, groups: list[Group], unit: Collection[int]) -> str:
     """Name of a unit; where there is no short one, what its groups are and its formula."""
     known = _names().get(kind)
-    protonated = any(g.kind == "ammonium" and not set(g.atoms) - set(unit) for g in groups)
     if known is not None:
-        return {
-            "amino": "ammonio",
-            "methylamino": "methylammonio",
-            "dimethylamino": "dimethylammonio",
-            "diethylamino": "diethylammonio",
-            "guanidino": "guanidinio",
-            "amidino": "amidinio",
-        }.get(known, known) if protonated or known in ("guanidino", "amidino") else known
+        return known
     from qsar.constants.functional_groups import functional_groups
 
     labels = functional_groups()
@@ -145,7 +146,7 @@ def _formula(graph: Graph, kind: str) -> str:
 
     mol = Chem.MolFromSmiles(kind, sanitize=False)
     mol.UpdatePropertyCache(strict=False)
-    return str(CalcMolFormula(mol)).replace("*", "")
+    return re.sub(r"\*\d*", "", str(CalcMolFormula(mol)))
 
 
 def place_of(graph: Graph, rule: str, parent: Collection[int], path: tuple[int, ...], carrier: str) -> str:

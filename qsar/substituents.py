@@ -121,6 +121,7 @@ def decompose(acid: Acid, site: int, ionised: frozenset[int] = frozenset()) -> D
     own = next(g for g in groups if g.kind == "carboxyl" and g.atoms[0] == site)
     rule, parent = _parent(acid, groups, own)
     distance = graph.distances(site, frozenset(own.atoms[1:]))
+    protonated = frozenset(g.atoms[0] for g in groups if g.kind == "ammonium")
     units = _Units(graph, groups, parent, distance).run()
     rank = list(Chem.CanonicalRankAtoms(acid.mol, breakTies=True))
     units.sort(key=lambda unit: (min(distance[a] for a in unit), min(rank[a] for a in unit)))
@@ -132,7 +133,7 @@ def decompose(acid: Acid, site: int, ionised: frozenset[int] = frozenset()) -> D
         atoms = (first, *sorted(a for a in unit if a != first))
         carrier = owner.get(path[-2])
         inner = parent if carrier is None else units[carrier]
-        kind = unit_kind(acid.mol, unit, inner, ionised)
+        kind = unit_kind(acid.mol, unit, inner, ionised, protonated)
         found.append(
             Substituent(
                 unit_name(kind, graph, groups, unit),
@@ -313,17 +314,14 @@ class _Units:
                 continue
             system = set(ring_system(self.graph, a))
             seen |= system
-            if not system & self.parent:
-                # lactams, lactones, imides, cyclic sulfones: the ring is what it is by its whole group
-                for group in self.groups:
-                    inside = system.intersection(group.atoms)
-                    if not inside or not (
-                        group.kind in _ACYL or any(self.graph.numbers[b] != 6 for b in inside)
-                    ):
-                        continue
+            free = system - self.parent
+            # lactams, lactones, imides, cyclic sulfones: the ring is what it is by its whole group
+            for group in self.groups:
+                inside = free.intersection(group.atoms)
+                if inside and (group.kind in _ACYL or any(self.graph.numbers[b] != 6 for b in inside)):
                     ends = {b for b in set(group.atoms) - system if len(self.graph.neighbours[b]) == 1}
                     system |= {b for b in ends if inside.intersection(self.graph.neighbours[b])}
-                seen |= system
+            seen |= system
             self._new(system, False)
 
     def _functional_groups(self) -> None:

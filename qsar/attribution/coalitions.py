@@ -16,7 +16,7 @@ from qsar.isomers import configurations
 from qsar.structures import Acid
 from qsar.substituents import Decomposition
 
-_SITE, _IONISED = 1, 2
+_SITE, _IONISED, _NEUTRAL = 1, 2, 3
 
 
 @dataclass(frozen=True, slots=True)
@@ -28,14 +28,12 @@ class Hypothetical:
     smiles : str
         Canonical.
     key : str
-        Equal for molecules in which the same group is asked about in the same charge state.
-    mol : rdkit.Chem.Mol
-        With the site and the ionised carboxyl carbons marked by atom map numbers.
+        Equal for molecules in which the same group is asked about in the same charge state: a
+        SMILES with the site and the other carboxyl carbons marked by atom map numbers.
     """
 
     smiles: str
     key: str
-    mol: Chem.Mol
 
 
 def hypothetical(acid: Acid, parts: Decomposition, ionised: frozenset[int], kept: Collection[int]) -> Hypothetical:
@@ -58,14 +56,13 @@ def hypothetical(acid: Acid, parts: Decomposition, ionised: frozenset[int], kept
     for position in kept:
         atoms.update(parts.substituents[position].atoms)
     mol = _without(acid, atoms)
-    marks = [a for a in mol.GetAtoms() if a.GetIntProp("was") == parts.site or a.GetIntProp("was") in ionised]
-    for atom in marks:
-        atom.SetAtomMapNum(_SITE if atom.GetIntProp("was") == parts.site else _IONISED)
-    key = Chem.MolToSmiles(mol)
     plain = Chem.Mol(mol)
-    for atom in plain.GetAtoms():
-        atom.SetAtomMapNum(0)
-    return Hypothetical(Chem.MolToSmiles(plain), key, mol)
+    for atom in mol.GetAtoms():
+        was = atom.GetIntProp("was")
+        if was in acid.sites:
+            atom.SetAtomMapNum(_SITE if was == parts.site else _IONISED if was in ionised else _NEUTRAL)
+    key = Chem.MolToSmiles(mol)
+    return Hypothetical(Chem.MolToSmiles(plain), key)
 
 
 def _without(acid: Acid, atoms: set[int]) -> Chem.Mol:
@@ -153,10 +150,11 @@ def cases(molecule: Hypothetical) -> list[Case]:
     fresh = Chem.MolFromSmiles(molecule.key)
     site = next(a.GetIdx() for a in fresh.GetAtoms() if a.GetAtomMapNum() == _SITE)
     ionised = frozenset(a.GetIdx() for a in fresh.GetAtoms() if a.GetAtomMapNum() == _IONISED)
+    sites = tuple(a.GetIdx() for a in fresh.GetAtoms() if a.GetAtomMapNum())
     for atom in fresh.GetAtoms():
         atom.SetAtomMapNum(0)
     Chem.AssignStereochemistry(fresh, cleanIt=True, force=True)
-    return open_cases(Acid(molecule.smiles, fresh, (site, *sorted(ionised))), site, ionised)
+    return open_cases(Acid(molecule.smiles, fresh, sites), site, ionised)
 
 
 def open_cases(acid: Acid, site: int, ionised: frozenset[int]) -> list[Case]:

@@ -1,1 +1,1 @@
-"""Checks on a table of measured acids: against open rows, against linear free-energy lines, against itself."""
+"""Checks on a table of measured acids: against open rows, published lines and itself."""

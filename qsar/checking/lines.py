@@ -16,7 +16,7 @@ from qsar.checking.rows import TableRow
 from qsar.constants import Substituent, substituents
 
 BENZOIC = 4.20
-"""pKa of benzoic acid, from which Hammett's constants are counted (Hansch, Leo, Taft, Chem. Rev. 1991, 91, 165)."""
+"""pKa of benzoic acid, from which Hammett's constants are counted (Hansch, Leo, Taft 1991)."""
 
 IONISED_GROUPS = frozenset({"NH2", "NHCH3", "N(CH3)2", "NHC2H5", "N(C2H5)2", "NHNH2", "CO2H", "CO2-"})
 """Groups that gain a proton before the carboxyl group loses its own, or are a second carboxyl group."""
@@ -89,7 +89,9 @@ def fit(points: Sequence[Point]) -> Line:
         If there are too few points.
     """
     if len({p.constant for p in points}) < 3:
-        raise ValueError(f"{len(points)} acids of this series in the table; a line needs three different groups")
+        raise ValueError(
+            f"{len(points)} acids of this series in the table; a line needs three different groups"
+        )
     x = np.array([p.constant for p in points])
     y = np.array([p.row.pka for p in points])
     slope, intercept = np.polyfit(x, y, 1)
@@ -162,7 +164,7 @@ def chain_gaps(rows: Iterable[TableRow], longest: int = 10) -> dict[int, float]:
     by_key = {(row.smiles, row.step): row.pka for row in rows}
     gaps = {}
     for carbons in range(2, longest + 1):
-        smiles = Chem.CanonSmiles("OC(=O)" + "C" * (carbons - 2) + "C(=O)O")
+        smiles = str(Chem.MolToSmiles(Chem.MolFromSmiles("OC(=O)" + "C" * (carbons - 2) + "C(=O)O")))
         if (smiles, 1) in by_key and (smiles, 2) in by_key:
             gaps[carbons] = by_key[smiles, 2] - by_key[smiles, 1]
     return gaps

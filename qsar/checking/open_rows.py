@@ -8,8 +8,8 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 from qsar.checking.rows import TableRow
-from qsar.curation.iupac import OpenStep
 from qsar.curation.isomer_labels import one_spelling, without_centres
+from qsar.curation.iupac import OpenStep
 
 BANDS = (0.05, 0.1, 0.2)
 """Limits of the bands in pKa units; a difference above the last is "beyond"."""
@@ -66,8 +66,8 @@ def band(difference: float) -> str:
 def compare(rows: Iterable[TableRow], steps: Iterable[OpenStep]) -> list[Comparison]:
     """Pair the rows of a table with open values of the same acid, isomer and step.
 
-    Mirror images are one acid. Where one side does not state the configuration of its centres, they are paired
-    if the other side holds a single configuration.
+    Mirror images are one acid. Where one side does not state the configuration of its centres, they are
+    paired if the other side holds a single configuration.
 
     Parameters
     ----------
@@ -104,7 +104,7 @@ def compare(rows: Iterable[TableRow], steps: Iterable[OpenStep]) -> list[Compari
 
 
 def summary(comparisons: Sequence[Comparison]) -> list[str]:
-    """Lines for people: how many were compared, how far they lie apart, and what lies beyond the last band."""
+    """Lines for people: how many were compared, how far they lie apart, what lies beyond the last band."""
     if not comparisons:
         return ["open rows: no row of the table is among them"]
     size = [abs(c.difference) for c in comparisons]
@@ -112,9 +112,10 @@ def summary(comparisons: Sequence[Comparison]) -> list[str]:
     counts = ", ".join(f"{sum(s <= limit + _ROUNDING for s in size)} within {limit:g}" for limit in BANDS)
     beyond = [c for c in comparisons if abs(c.difference) > BANDS[-1] + _ROUNDING]
     lines = [
-        f"open rows: {len(comparisons)} steps compared; absolute difference median {statistics.median(size):.3f}, "
-        f"mean {statistics.fmean(size):.3f}; table minus open, mean {statistics.fmean(signed):+.3f}; {counts}, "
-        f"{len(beyond)} beyond {BANDS[-1]:g}"
+        f"open rows: {len(comparisons)} steps compared; absolute difference "
+        f"median {statistics.median(size):.3f}, mean {statistics.fmean(size):.3f}; "
+        f"table minus open, mean {statistics.fmean(signed):+.3f}; "
+        f"{counts}, {len(beyond)} beyond {BANDS[-1]:g}"
     ]
     for c in sorted(beyond, key=lambda c: -abs(c.difference)):
         reason = c.row.entry("open rows").removeprefix(f"open rows: {c.band}").lstrip("; ")

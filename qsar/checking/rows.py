@@ -16,8 +16,8 @@ from qsar.table import COLUMNS
 KINDS = {
     "open rows": r"^open rows: (within|beyond)",
     "OBIGT": r"^OBIGT: (within|beyond)",
-    "second publication": r"^(second (handbook|table|source) \([\w&, ]+\)|[A-Z]+\d* prints the same primary work): "
-    r"(within|beyond)",
+    "second publication": r"^(second (handbook|table|source) \([\w&, ]+\)|"
+    r"[A-Z]+\d* prints the same primary work): (within|beyond)",
     "Hammett or Taft line": r"^(Hammett line|Taft line|sigma_I line|fall-off)[^;:]*: (within|beyond)",
     "sum of single-group shifts": r"^sum of the single-group shifts[^;:]*: (within|beyond)",
 }
@@ -97,7 +97,9 @@ def read_rows(path: Path) -> list[TableRow]:
             reader = csv.DictReader(handle)
             missing = [column for column in COLUMNS if column not in (reader.fieldnames or ())]
             if missing:
-                raise UserError(f"{path.name}: no column {', '.join(missing)}; the table needs {', '.join(COLUMNS)}")
+                raise UserError(
+                    f"{path.name}: no column {', '.join(missing)}; the table needs {', '.join(COLUMNS)}"
+                )
             return [_row(path.name, line, row) for line, row in enumerate(reader, start=2)]
     except OSError as error:
         raise UserError(f"cannot read {path}: {error.strerror}") from error

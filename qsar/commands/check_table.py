@@ -1,4 +1,4 @@
-"""``acidity check-table``: a table of measured acids against itself, published lines and open measurements."""
+"""``acidity check-table``: a table of measured acids against itself, published lines and open rows."""
 
 from __future__ import annotations
 
@@ -22,8 +22,11 @@ SOUND, FAULTY = 0, 3
 def add_arguments(parser: argparse.ArgumentParser) -> None:
     """Describe the arguments of the command."""
     parser.add_argument(
-        "table", nargs="?", type=Path, metavar="TABLE", help="a CSV with the columns of the reference table "
-        "(default: the reference table)"
+        "table",
+        nargs="?",
+        type=Path,
+        metavar="TABLE",
+        help="a CSV with the columns of the reference table (default: the reference table)",
     )
     parser.add_argument(
         "--open-data",
@@ -33,7 +36,9 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         help="file of the IUPAC Digitized pKa Dataset (release v2.4 or its header), or the folder that holds "
         f"{OPEN_ROWS}; it is compared with and never copied (default: QSAR_OPEN_DATA)",
     )
-    parser.add_argument("--plots", type=Path, metavar="FOLDER", help="also draw the table, as PNG files in FOLDER")
+    parser.add_argument(
+        "--plots", type=Path, metavar="FOLDER", help="also draw the table, as PNG files in FOLDER"
+    )
 
 
 def run(args: argparse.Namespace) -> int:
@@ -73,7 +78,8 @@ def _counts(rows: Sequence[TableRow]) -> list[str]:
     by_kind = ", ".join(f"{kind} {sum(kind in found for found in kinds)}" for kind in KINDS)
     families = Counter(family for _, family in {(row.smiles, row.family) for row in rows})
     return [
-        f"{len(rows)} steps of {len({row.smiles for row in rows})} acids; {checked} ({share}) carry a check: {by_kind}",
+        f"{len(rows)} steps of {len({row.smiles for row in rows})} acids; "
+        f"{checked} ({share}) carry a check: {by_kind}",
         "acids by family: " + ", ".join(f"{name} {count}" for name, count in families.most_common()),
     ]
 
@@ -95,8 +101,8 @@ def _line(name: str, points: Sequence[Point], limit: float) -> list[str]:
     line: Line = fit(points)
     far = ", ".join(f"{point.group} {residual:+.2f}" for point, residual in line.beyond(limit))
     return [
-        f"{name}: {len(points)} acids, pKa = {line.intercept:.3f} {line.slope:+.3f} constant, RMS {line.rms:.3f}; "
-        f"beyond {limit:g}: {far or 'none'}"
+        f"{name}: {len(points)} acids, pKa = {line.intercept:.3f} {line.slope:+.3f} constant, "
+        f"RMS {line.rms:.3f}; beyond {limit:g}: {far or 'none'}"
     ]
 
 
@@ -127,7 +133,6 @@ def _open(rows: Sequence[TableRow], place: str | Path | None) -> list[str]:
         f"open rows used: {len(data.steps)} steps of {len({step.smiles for step in data.steps})} acids; "
         f"left out: {left}",
     ]
-
 
 
 def _shortened(reason: str) -> str:

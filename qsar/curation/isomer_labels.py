@@ -87,7 +87,9 @@ def without_centres(smiles: str) -> str:
 
 def stereocentres(mol: Chem.Mol) -> list[int]:
     """Atoms that are stereocentres, whether their configuration is stated or not."""
-    found = Chem.FindMolChiralCenters(mol, includeUnassigned=True, useLegacyImplementation=False)
+    found = Chem.FindMolChiralCenters(  # type: ignore[no-untyped-call]
+        mol, includeUnassigned=True, useLegacyImplementation=False
+    )
     return [index for index, _ in found]
 
 
@@ -98,8 +100,8 @@ def _canonical(mol: Chem.Mol) -> str:
 
 def _isomers(smiles: str) -> list[Chem.Mol]:
     mol = Chem.MolFromSmiles(smiles)
-    options = StereoEnumerationOptions(unique=True, maxIsomers=16)
-    return list(EnumerateStereoisomers(mol, options=options))
+    options = StereoEnumerationOptions(unique=True, maxIsomers=16)  # type: ignore[no-untyped-call]
+    return list(EnumerateStereoisomers(mol, options=options))  # type: ignore[no-untyped-call]
 
 
 def _double_bond_isomer(smiles: str, word: str) -> str | None:
@@ -126,7 +128,7 @@ def _main_chain(mol: Chem.Mol, near: int, far: int, carboxyls: set[int]) -> int 
     acids = [index for index in carbons if index in carboxyls]
     for choice in (acids, carbons, [a.GetIdx() for a in chain] if not carbons else []):
         if len(choice) == 1:
-            return choice[0]
+            return int(choice[0])
     return None
 
 
@@ -161,9 +163,7 @@ def _handedness(mol: Chem.Mol, ring: tuple[int, ...], index: int) -> bool:
     drawn = [bond.GetOtherAtomIdx(index) for bond in atom.GetBonds()]
     outside = next(n for n in drawn if n not in (before, after))
     wanted = [before, after, outside]
-    swaps = sum(
-        drawn.index(wanted[i]) > drawn.index(wanted[j]) for i in range(3) for j in range(i + 1, 3)
-    )
+    swaps = sum(drawn.index(wanted[i]) > drawn.index(wanted[j]) for i in range(3) for j in range(i + 1, 3))
     clockwise: bool = atom.GetChiralTag() == Chem.ChiralType.CHI_TETRAHEDRAL_CW
     return clockwise == (swaps % 2 == 0)
 

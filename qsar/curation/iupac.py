@@ -1,8 +1,8 @@
 """One value for each acid and carboxyl step from the IUPAC Digitized pKa Dataset.
 
-Zheng, J. W.; Lafontant-Joseph, O. *IUPAC Digitized pKa Dataset*, doi:10.5281/zenodo.7236452 (CC BY-NC 4.0). It
-digitises Serjeant and Dempsey 1979 and Perrin 1965 and 1972. The dataset is read from where the user keeps it
-and is no part of this project.
+Zheng, J. W.; Lafontant-Joseph, O. *IUPAC Digitized pKa Dataset*, doi:10.5281/zenodo.7236452 (CC BY-NC 4.0).
+It digitises Serjeant and Dempsey 1979 and Perrin 1965 and 1972. The dataset is read from where the user keeps
+it and is no part of this project.
 
 Of the rows that measure one carboxyl step (see :mod:`qsar.curation.iupac_rules`) those of the best rank are
 kept and their median is taken. Rank, in this order: 20 to 30 °C; the grade that the compilers gave; 24 to
@@ -18,6 +18,7 @@ from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import lru_cache
+from itertools import pairwise
 from pathlib import Path
 
 from qsar.curation import iupac_rules as rules
@@ -179,9 +180,11 @@ def sort_rows(rows: Sequence[Mapping[str, str]]) -> OpenData:
         placed, refused = _place(acid_rows)
         excluded += refused
         chosen = [_choose(smiles, step, found) for step, found in sorted(placed.items())]
-        if any(a.pka >= b.pka for a, b in zip(chosen, chosen[1:], strict=False)):
+        if any(a.pka >= b.pka for a, b in pairwise(chosen)):
             reason = "the steps of this acid do not rise"
-            excluded += [Excluded(r.line, r.given, r.text, reason) for found in placed.values() for r in found]
+            excluded += [
+                Excluded(r.line, r.given, r.text, reason) for found in placed.values() for r in found
+            ]
             continue
         steps += chosen
     return OpenData(steps, sorted(excluded, key=lambda e: e.line))
@@ -274,16 +277,18 @@ def _step(row: _Row, acid: Acid, counted: dict[int, int] | None) -> int | str:
 def _zwitterion_steps(rows: Iterable[_Row]) -> dict[int, int]:
     """Carboxyl step of rows of an amino acid, by line.
 
-    Each laboratory counts in its own way, so the constants of one reference are looked at together: those below
-    :data:`qsar.curation.iupac_rules.ZWITTERION_LIMIT` belong to the carboxyl groups, in rising order, provided
-    that there are as many as there are carboxyl groups.
+    Each laboratory counts in its own way, so the constants of one reference are looked at together: those
+    below :data:`qsar.curation.iupac_rules.ZWITTERION_LIMIT` belong to the carboxyl groups, in rising order,
+    provided that there are as many as there are carboxyl groups.
     """
     series: dict[tuple[bool, str], dict[int | None, list[_Row]]] = defaultdict(lambda: defaultdict(list))
     for row in rows:
         series[row.label.base, row.reference][row.label.number].append(row)
     steps = {}
     for by_number in series.values():
-        medians = sorted((statistics.median(r.value for r in found), n or 0) for n, found in by_number.items())
+        medians = sorted(
+            (statistics.median(r.value for r in found), n or 0) for n, found in by_number.items()
+        )
         low = [place for median, place in medians if median < rules.ZWITTERION_LIMIT]
         sites = len(next(iter(by_number.values()))[0].acid.sites)
         if len(low) == sites:

@@ -39,7 +39,7 @@ _SOLVENTS = "ethanol|methanol|dioxan|acetone|alcohol|propanol|dimethyl|acetonitr
 _PERCENT = re.compile(rf"(\d+(?:\.\d+)?)\s*%[^,;]*?(?:{_SOLVENTS})", re.IGNORECASE)
 _FROM_MIXTURES = re.compile(rf"(?:extrapolated|estimated)[^;]*(?:{_SOLVENTS})", re.IGNORECASE)
 _ACIDITY_FUNCTION = re.compile(r"H2SO4|HClO4|\bH[oA0I+]\s+(?:scale|function)|H\+ function", re.IGNORECASE)
-_HEAVY_WATER = re.compile(r"\bin D2O|in D2O|\bDCl\b")
+_HEAVY_WATER = re.compile(r"\bin D2O|\bDCl\b", re.IGNORECASE)
 _LABEL = re.compile(r"pKa(?P<base>H)?(?P<number>\d)?(?:\((?P<word>.*)\))?")
 _IONIC = re.compile(r"\bI\s*=\s*(\d*\.?\d+)(\s*(?:to|-)\s*\d*\.?\d+)?")
 
@@ -135,9 +135,11 @@ def ionic_strength(remarks: str) -> float | None:
 
 
 def kind_of_constant(remarks: str) -> str:
-    """"mixed", "concentration", or empty where the remarks do not say."""
+    """Say "mixed", "concentration", or nothing where the remarks do not say."""
     lower = remarks.lower()
-    return next((kind for kind in ("mixed", "concentration") if f"{kind}\"" in lower or f"{kind} const" in lower), "")
+    return next(
+        (kind for kind in ("mixed", "concentration") if f'{kind}"' in lower or f"{kind} const" in lower), ""
+    )
 
 
 _UNCLEAR_NITROGEN = frozenset({"amino", "pyridinium", "hydrazino", "hydroxyamino", "imino"})

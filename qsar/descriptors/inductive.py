@@ -16,7 +16,7 @@ The count over shells is cumulative for that reason: a plain count in each shell
 
 from __future__ import annotations
 
-from math import sqrt
+from math import log, sqrt
 
 from qsar.constants.electronegativity import group_electronegativity_of_smiles
 from qsar.constants.functional_groups import functional_groups
@@ -26,6 +26,7 @@ from qsar.groups import ANIONIC, CATIONIC
 
 ATTENUATION = (0.25, 0.4, 0.6)
 _HYDROGEN_ELECTRONEGATIVITY = 2.20
+_BASE = 0.15  # sigma_I units; keeps the damping finite for a bare chain
 _CHARGED = frozenset(CATIONIC) | frozenset(ANIONIC)
 
 _excess: dict[str, float] = {}
@@ -50,7 +51,7 @@ def _sums(terms: list[tuple[float, int]]) -> list[float]:
 _LOWERS = columns(
     "withdrawing_g25 withdrawing_g40 withdrawing_g60 withdrawing_pi_g60 withdrawing_pi_g80 withdrawing_largest "
     "withdrawing_second withdrawing_squares withdrawing_root withdrawing_within1 withdrawing_within2 "
-    "withdrawing_within3 withdrawing_within4",
+    "withdrawing_within3 withdrawing_within4 withdrawing_damped_root withdrawing_damped_log",
     lowers=True,
 ) + columns("withdrawing_chi_g40", "Pauling", lowers=True)
 
@@ -60,6 +61,11 @@ def _withdrawing(view: SiteView) -> list[float]:
     pi = [(t.constants.sigma_i, t.bonds) for t in view.withdrawing if t.pi]
     attenuated = sorted((s * 0.4 ** (n - 1) for s, n in terms), reverse=True)
     sums = _sums(terms)
+    # What withdraws already leaves less for the next group to take: both damped columns grow with the new
+    # groups and grow more slowly where the scaffold itself withdraws, which no edit of the groups changes.
+    present = _BASE + sum(
+        max(t.constants.sigma_i, 0.0) * 0.4 ** max(t.bonds - 1, 0) for t in view.terms if t is not view.alpha_system
+    )
     return [
         *sums,
         sum(s * 0.6 ** (n - 1) for s, n in pi),
@@ -69,6 +75,8 @@ def _withdrawing(view: SiteView) -> list[float]:
         sum(x * x for x in attenuated),
         sqrt(max(sums[1], 0.0)),
         *(sum(s for s, n in terms if n <= k) for k in (1, 2, 3, 4)),
+        sqrt(sums[1] + present) - sqrt(present),
+        log(1.0 + sums[1] / present),
         sum(max(electronegativity_excess(t.kind), 0.0) * 0.4 ** (t.bonds - 1) for t in view.withdrawing),
     ]
 

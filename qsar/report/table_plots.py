@@ -16,7 +16,7 @@ from qsar.graph import Graph
 from qsar.groups import perceive
 from qsar.structures import read_acid
 
-#: Colours of Okabe and Ito (jfly.uni-koeln.de/color), told apart also with a colour vision deficiency, and shapes.
+#: Colours of Okabe and Ito, told apart also with a colour vision deficiency, and shapes.
 _STEPS = (("step 1", "#0072B2", "o"), ("step 2", "#E69F00", "^"), ("step 3 and on", "#009E73", "s"))
 _FARTHEST = 8
 _DOTS_PER_INCH = 150
@@ -55,7 +55,7 @@ def draw(rows: Sequence[TableRow], folder: Path) -> list[Path]:
 
 
 def families(rows: Sequence[TableRow]) -> Figure:
-    """pKa of every step against the family of its acid, families by rising median of the first step."""
+    """PKa of every step against the family of its acid, families by rising median of the first step."""
     by_family: dict[str, list[TableRow]] = defaultdict(list)
     for row in rows:
         by_family[row.family].append(row)
@@ -91,7 +91,9 @@ def _median_first(rows: Sequence[TableRow]) -> float:
 def coverage(rows: Sequence[TableRow]) -> Figure:
     """Number of acids that carry a group at a distance from COOH; empty fields are gaps of the table."""
     counts = group_distances({row.smiles for row in rows})
-    kinds = sorted({kind for kind, _ in counts}, key=lambda kind: sum(counts[kind, d] for d in range(1, _FARTHEST + 1)))
+    kinds = sorted(
+        {kind for kind, _ in counts}, key=lambda kind: sum(counts[kind, d] for d in range(1, _FARTHEST + 1))
+    )
     grid = np.array([[counts[kind, d] for d in range(1, _FARTHEST + 1)] for kind in kinds], dtype=float)
     figure = Figure(figsize=(7.5, 0.26 * len(kinds) + 1.6), layout="constrained")
     axes = figure.add_subplot()
@@ -120,8 +122,8 @@ def group_distances(structures: set[str]) -> Counter[tuple[str, int]]:
     Returns
     -------
     collections.Counter
-        By kind of group (see :mod:`qsar.groups`) and bonds from the nearest carboxyl carbon, the last distance
-        standing for all further ones. An acid counts once for a kind and distance; the carboxyl group that the
+        By kind of group (see :mod:`qsar.groups`) and bonds from a carboxyl carbon, the last distance standing
+        for all further ones. An acid counts once for a kind and distance; the carboxyl group that the
         distance is counted from does not.
     """
     counts: Counter[tuple[str, int]] = Counter()

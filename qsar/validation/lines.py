@@ -38,19 +38,11 @@ def group_on(mol: Chem.Mol, carrier: int, first: int) -> str | None:
             elif i not in seen:
                 seen.add(i)
                 queue.append(i)
-    symbols = ["*" if a.GetIdx() == carrier else _symbol(a) for a in mol.GetAtoms()]
-    return str(
-        Chem.MolFragmentToSmiles(mol, [carrier, *sorted(seen)], atomSymbols=symbols, isomericSmiles=False)
-    )
-
-
-def _symbol(atom: Chem.Atom) -> str:
-    return str(atom.GetSmarts()) if atom.GetFormalCharge() or atom.GetNoImplicit() else str(_bare(atom))
-
-
-def _bare(atom: Chem.Atom) -> str:
-    symbol = str(atom.GetSymbol())
-    return symbol.lower() if atom.GetIsAromatic() else symbol
+    part = Chem.RWMol(mol)
+    part.ReplaceAtom(carrier, Chem.Atom(0))
+    for a in sorted(set(range(mol.GetNumAtoms())) - seen - {carrier}, reverse=True):
+        part.RemoveAtom(a)
+    return str(Chem.MolToSmiles(part, isomericSmiles=False))
 
 
 def hammett_sum(acid: Acid) -> float | None:

@@ -1,4 +1,4 @@
-"""``acidity check-table`` on small tables of invented values (behaviour of the program, no outside source)."""
+"""``acidity check-table`` on small tables of invented values (how the program behaves; no source)."""
 
 from __future__ import annotations
 

@@ -46,7 +46,7 @@ def test_meta_and_para_benzoic_acids_follow_hammett(hammett: Line) -> None:
 
 
 def test_unhindered_acids_follow_taft(taft: Line) -> None:
-    """pKa = 4.66 - 1.62 sigma* (Perrin, Dempsey, Serjeant, pKa Prediction, 1981; form from memory).
+    """PKa = 4.66 - 1.62 sigma* (Perrin, Dempsey, Serjeant, pKa Prediction, 1981; form from memory).
 
     Sigma* of R: Taft 1956, as in the table of substituents.
     """
@@ -57,7 +57,7 @@ def test_unhindered_acids_follow_taft(taft: Line) -> None:
     assert {point.group for point, _ in taft.beyond(0.15)} == TAFT_OUTLIERS.keys()
 
 
-def test_second_step_of_straight_chain_diacids_draws_near_the_statistical_limit(rows: list[TableRow]) -> None:
+def test_steps_of_straight_chain_diacids_draw_near_the_statistical_limit(rows: list[TableRow]) -> None:
     """Two equal groups far apart differ by log10 4 (Adams, J. Am. Chem. Soc. 1916, 38, 1503; Bjerrum 1923).
 
     Sebacic acid (C10) breaks the steady fall: its two handbook steps lie 1.00 apart, and handbooks disagree on

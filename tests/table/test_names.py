@@ -57,8 +57,8 @@ def test_names_give_the_structures(cells: list[dict[str, str]]) -> None:
 def test_words_for_isomers_against_systematic_names(name: str, smiles: str, word: str) -> None:
     """The structure that a label such as "trans" is given, against the systematic name of that isomer.
 
-    By IUPAC rule P-93.5.1.4 cis and trans of an open chain follow the main chain, E and Z the ranks of the groups
-    (from memory).
+    Cis and trans of an open chain follow the main chain, E and Z the ranks of the groups (IUPAC
+    Recommendations 2013, P-91.2 and P-93.5; from memory).
     """
     opsin = pytest.importorskip("py2opsin", reason="needs py2opsin (pip install 'qsar[test]')")
     from qsar.curation.isomer_labels import isomer

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 import re
 import statistics
+from itertools import pairwise
 from pathlib import Path
 
 import pytest
@@ -22,7 +23,8 @@ def comparisons(rows: list[TableRow], open_data_path: Path) -> list[Comparison]:
 def test_open_rows_agree(comparisons: list[Comparison], capsys: pytest.CaptureFixture[str]) -> None:
     """IUPAC Digitized pKa Dataset, doi:10.5281/zenodo.7236452.
 
-    Two laboratories that measured one acid there at 24 to 26 °C differ by 0.09 in the median and 0.14 on average.
+    Two laboratories that measured one acid there at 24 to 26 °C differ by 0.09 in the median and 0.14 on
+    average.
     """
     size = [abs(c.difference) for c in comparisons]
     with capsys.disabled():
@@ -71,7 +73,7 @@ SPECIES = {
 
 
 def test_gibbs_energies_of_ionisation_agree(rows: list[TableRow]) -> None:
-    """OBIGT (Dick, Front. Earth Sci. 2019, 7, 180), read through pychnosz; most organic acids after Shock 1995.
+    """OBIGT (Dick, Front. Earth Sci. 2019, 7, 180), read through pychnosz; most acids after Shock 1995.
 
     pKa = (G(anion) - G(acid)) / (RT ln 10) at 25 °C, the proton having G = 0 by convention.
     """
@@ -84,7 +86,7 @@ def test_gibbs_energies_of_ionisation_agree(rows: list[TableRow]) -> None:
     measured = {(row.smiles, row.step): row.pka for row in rows}
     differences = {}
     for smiles, species in SPECIES.items():
-        for step, (acid, anion) in enumerate(zip(species, species[1:], strict=False), start=1):
+        for step, (acid, anion) in enumerate(pairwise(species), start=1):
             there = (joules[anion] - joules[acid]) / (math.log(10) * 8.314462618 * 298.15)
             differences[smiles, step] = measured[smiles, step] - there
     size = [abs(value) for value in differences.values()]

@@ -1,0 +1,136 @@
+"""Training that an interrupt does not lose: each finished member is kept as plain arrays until all are there."""
+
+from __future__ import annotations
+
+import hashlib
+import json
+import shutil
+import zipfile
+from collections.abc import Callable, Sequence
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from qsar.descriptors import LOWERS
+from qsar.files import atomic_path
+from qsar.model.boosting import Trees, trees_of
+from qsar.model.bundle import settings_to
+from qsar.model.kernel import Scaling
+from qsar.model.members import Members, Settings, fit_member, fold_of_acids
+from qsar.model.training_set import Ints, TrainingSet
+
+_TREES = ("feature", "threshold", "left", "right", "root", "baseline")
+_PLAIN = ("dual", "slopes", "offset", "depth")
+Arrays = dict[str, NDArray[Any]]
+
+
+def fingerprint(data: TrainingSet, settings: Settings) -> str:
+    """Hexadecimal SHA-256 of everything that decides the members: descriptors, values, settings, libraries."""
+    import scipy
+    import sklearn
+
+    digest = hashlib.sha256()
+    versions = [np.__version__, scipy.__version__, sklearn.__version__]
+    digest.update(json.dumps([settings_to(settings), versions], sort_keys=True).encode())
+    for array in (data.x, data.first, data.step_acid, data.step_number, data.pka, data.uncertainty, data.weight):
+        digest.update(repr((array.shape, array.dtype.str)).encode() + np.ascontiguousarray(array).tobytes())
+    return digest.hexdigest()
+
+
+def fit_members_resumably(
+    data: TrainingSet,
+    settings: Settings,
+    cache: Path,
+    done: Callable[[int], object] = lambda _: None,
+    note: Callable[[str], None] = lambda _: None,
+) -> tuple[Members, Ints]:
+    """Fit the ensemble as :func:`qsar.model.members.fit_members` does, member by member through a cache.
+
+    Parameters
+    ----------
+    data : TrainingSet
+    settings : Settings
+    cache : pathlib.Path
+        Folder for the finished members; made if need be, and left for the caller to remove.
+    done : callable
+        Called with 1 after each member, found or fitted.
+    note : callable
+        Told, in one line, what was found.
+
+    Returns
+    -------
+    members : Members
+    fold : ndarray of int, shape (n_acids,)
+        Member that never saw each acid.
+    """
+    fold = fold_of_acids(len(data.acids), settings)
+    scaling = Scaling.of(data.x[:, ~LOWERS])
+    key = fingerprint(data, settings)[:24]
+    cache.mkdir(parents=True, exist_ok=True)
+    fitted: list[Arrays] = []
+    found = 0
+    for k in range(settings.folds):
+        path = cache / f"{key}-{k}.npz"
+        arrays = _read(path, note)
+        if arrays is None:
+            member = fit_member(data, scaling, fold[data.step_acid] != k, settings, settings.seed + 1000 * k)
+            trees = trees_of([member.booster])
+            arrays = {name: getattr(trees, name) for name in _TREES}
+            arrays |= {"dual": member.dual, "slopes": member.slopes}
+            arrays |= {"offset": np.array(member.offset), "depth": np.array(trees.depth)}
+            with atomic_path(path) as temporary:
+                np.savez(temporary, **arrays)  # type: ignore[arg-type]
+        else:
+            found += 1
+        fitted.append(arrays)
+        done(1)
+    if found:
+        note(f"{found} of {settings.folds} folds were finished by an earlier run and taken from {cache}")
+    members = Members(
+        settings,
+        scaling,
+        scaling(data.x[:, ~LOWERS]),
+        np.array([a["dual"] for a in fitted]),
+        np.array([a["slopes"] for a in fitted]),
+        float(fitted[0]["offset"]),
+        join_trees(fitted),
+    )
+    return members, fold
+
+
+def _read(path: Path, note: Callable[[str], None]) -> Arrays | None:
+    """A finished member, or None where there is none that can be read."""
+    if not path.exists():
+        return None
+    try:
+        with np.load(path, allow_pickle=False) as stored:
+            return {name: stored[name] for name in (*_TREES, *_PLAIN)}
+    except (OSError, ValueError, KeyError, EOFError, zipfile.BadZipFile) as problem:
+        note(f"{path.name} is damaged ({type(problem).__name__}) and is fitted again")
+        return None
+
+
+def join_trees(parts: Sequence[Arrays]) -> Trees:
+    """Several ensembles of one as one of several, nodes in the order of :func:`qsar.model.boosting.trees_of`."""
+    base = np.cumsum([0, *(len(p["feature"]) for p in parts)])
+
+    def moved(name: str) -> NDArray[np.int32]:
+        joined = np.concatenate([p[name] + b for p, b in zip(parts, base[:-1], strict=True)])
+        return joined.astype(np.int32)
+
+    return Trees(
+        np.concatenate([p["feature"] for p in parts]),
+        np.concatenate([p["threshold"] for p in parts]),
+        moved("left"),
+        moved("right"),
+        moved("root"),
+        np.concatenate([p["baseline"] for p in parts]),
+        max(int(p["depth"]) for p in parts),
+    )
+
+
+def remove_cache(cache: Path) -> None:
+    """Delete the finished members of a training that has ended well."""
+    shutil.rmtree(cache, ignore_errors=True)
