@@ -12,7 +12,7 @@ from rdkit import Chem
 
 @dataclass(frozen=True)
 class Advisory:
-    """A pattern and the sentence that goes with it; `positive` and `negative` are SMILES it must and must not match."""
+    """A pattern and its sentence; `positive` and `negative` are SMILES that it must and must not match."""
 
     name: str
     pattern: Chem.Mol

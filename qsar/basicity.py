@@ -1,4 +1,4 @@
-r"""Basic ring nitrogen and anilines: are they protonated where the carboxyl proton leaves?
+r"""Whether basic ring nitrogen and anilines are protonated where the carboxyl proton leaves.
 
 Both follow their own published linear free-energy relationships (Perrin, Dempsey & Serjeant, pKa Prediction for
 Organic Acids and Bases, 1981; coefficients from memory):

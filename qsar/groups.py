@@ -253,13 +253,20 @@ class _Perception:
             self.add("amino", a)
 
     def _unsaturated_carbon(self) -> None:
+        """C=C and C#C; cumulated double bonds are one group, so that no atom order decides which pair is found."""
         g = self.g
         for a, number in enumerate(g.numbers):
             if number != 6 or g.aromatic[a] or self.claimed[a]:
                 continue
-            for b, order in zip(g.neighbours[a], g.orders[a], strict=True):
-                if b > a and order >= 2.0 and g.numbers[b] == 6 and not self.claimed[a]:
-                    self.add("alkenyl" if order == 2.0 else "alkynyl", a, b)
+            run, triple = [a], False
+            for x in run:
+                for b, order in zip(g.neighbours[x], g.orders[x], strict=True):
+                    free = g.numbers[b] == 6 and not self.claimed[b] and not g.aromatic[b]
+                    if order >= 2.0 and free and b not in run:
+                        run.append(b)
+                        triple = triple or order == 3.0
+            if len(run) > 1:
+                self.add("alkynyl" if triple else "alkenyl", *sorted(run))
 
     def _aromatic_systems(self) -> None:
         g = self.g
@@ -290,11 +297,17 @@ def _ring_kind(g: Graph, system: set[int]) -> str:
     pyridine_like = [a for a in nitrogens if g.hydrogens[a] == 0 and len(g.neighbours[a]) == 2]
     if any(g.charges[a] > 0 and not _has_oxide(g, a) for a in nitrogens):
         return "quaternary_n"
-    if len(nitrogens) == 2 and len(pyridine_like) == 1 and hetero == [7, 7] and len(system) == 5 and _one_three(g, nitrogens):
+    if (
+        len(nitrogens) == 2
+        and len(pyridine_like) == 1
+        and hetero == [7, 7]
+        and len(system) == 5
+        and _one_three(g, nitrogens)
+    ):
         return "imidazolium"
     if pyridine_like and len(nitrogens) == 1 and hetero == [7]:
         return "pyridinium"
-    kinds = {(8,): "furyl", (16,): "thienyl", (7,): "pyrrolyl", (34,): "thienyl"}
+    kinds: dict[tuple[int, ...], str] = {(8,): "furyl", (16,): "thienyl", (7,): "pyrrolyl", (34,): "thienyl"}
     return kinds.get(tuple(hetero), "heteroaryl")
 
 

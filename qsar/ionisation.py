@@ -109,7 +109,8 @@ def closure_defect(micro: Floats, n: int) -> Floats:
     network = cube(n)
     energy = free_energies(micro, n)
     fitted = energy[..., network.end] - energy[..., network.start]
-    return np.sqrt(np.mean((micro - fitted) ** 2, axis=-1))
+    defect: Floats = np.sqrt(np.mean((micro - fitted) ** 2, axis=-1))
+    return defect
 
 
 def macroscopic(micro: Floats, n: int) -> Floats:

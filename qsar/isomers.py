@@ -30,16 +30,22 @@ def configurations(acid: Acid) -> tuple[list[Acid], str]:
     if not bonds and not ring_pairs:
         return [acid], ""
     if ring_pairs:
-        options = StereoEnumerationOptions(onlyUnassigned=True, unique=True, maxIsomers=MOST)
+        options = StereoEnumerationOptions(  # type: ignore[no-untyped-call]
+            onlyUnassigned=True, unique=True, maxIsomers=MOST
+        )
         keep = {a for pair in ring_pairs for a in pair}
-        smiles = {Chem.MolToSmiles(_forget(m, acid.mol, keep)) for m in EnumerateStereoisomers(mol, options=options)}
+        found = EnumerateStereoisomers(mol, options=options)  # type: ignore[no-untyped-call]
+        smiles = {Chem.MolToSmiles(_forget(m, acid.mol, keep)) for m in found}
     else:
         smiles = _over_double_bonds(mol, bonds)
     isomers = [read_acid(s) for s in sorted(smiles)]
     what = "E/Z" if bonds and not ring_pairs else "cis/trans" if not bonds else "E/Z and cis/trans"
     if len(isomers) < 2:
         return [acid], ""
-    return isomers, f"{what} configuration not stated: predicted over {len(isomers)} isomers, interval widened to hold them"
+    return (
+        isomers,
+        f"{what} configuration not stated: predicted over {len(isomers)} isomers, interval widened to hold them",
+    )
 
 
 def _open_double_bonds(mol: Chem.Mol) -> list[int]:
@@ -78,9 +84,7 @@ def _open_ring_pairs(acid: Acid) -> list[tuple[int, int]]:
         alpha = [b for b in graph.neighbours[site] if graph.numbers[b] == 6]
         if alpha and graph.ring_size[alpha[0]] and graph.hydrogens[alpha[0]] == 1 and graph.saturated(alpha[0]):
             carriers.append(alpha[0])
-    unspecified = [
-        a for a in carriers if acid.mol.GetAtomWithIdx(a).GetChiralTag() == Chem.ChiralType.CHI_UNSPECIFIED
-    ]
+    unspecified = [a for a in carriers if acid.mol.GetAtomWithIdx(a).GetChiralTag() == Chem.ChiralType.CHI_UNSPECIFIED]
     return [
         (a, b)
         for i, a in enumerate(unspecified)

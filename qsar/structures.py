@@ -12,7 +12,7 @@ from rdkit import Chem, RDLogger
 
 from qsar.graph import Graph
 
-RDLogger.DisableLog("rdApp.*")  # RDKit's own messages are replaced by the one-line reasons below
+RDLogger.DisableLog("rdApp.*")  # type: ignore[attr-defined]  # RDKit's own messages are replaced by the one-line reasons below
 
 MAX_HEAVY_ATOMS = 200
 MAX_SITES = 6
@@ -83,12 +83,12 @@ def read_acid(smiles: str) -> Acid:
     if not text:
         raise StructureError("empty structure; give a SMILES string")
     params = Chem.SmilesParserParams()
-    params.sanitize = False
-    params.removeHs = False
-    params.parseName = False
+    params.sanitize = params.removeHs = params.parseName = False  # type: ignore[assignment]
     mol = Chem.MolFromSmiles(text, params)
     if mol is None:
-        raise StructureError(f"'{_short(text)}' is not a SMILES string that can be read; check brackets and ring closures")
+        raise StructureError(
+            f"'{_short(text)}' is not a SMILES string that can be read; check brackets and ring closures"
+        )
     return acid_from_mol(mol)
 
 
@@ -148,7 +148,7 @@ def _largest_organic_part(mol: Chem.Mol, notes: list[str]) -> Chem.Mol:
 
 
 def _has_carboxyl(mol: Chem.Mol) -> bool:
-    return mol.HasSubstructMatch(_ANY_CARBOXYL)
+    return bool(mol.HasSubstructMatch(_ANY_CARBOXYL))
 
 
 _ANY_CARBOXYL = Chem.MolFromSmarts("[CX3](=O)[OX1-,OX2H1]")
@@ -202,8 +202,10 @@ def _neutralised(mol: Chem.Mol, notes: list[str]) -> Chem.Mol:
                 carboxylates += 1
             else:
                 deprotonated += 1
-        elif atom.GetAtomicNum() in _ACID_HYDROGEN and atom.GetTotalNumHs() and not any(
-            n.GetFormalCharge() < 0 for n in neighbours
+        elif (
+            atom.GetAtomicNum() in _ACID_HYDROGEN
+            and atom.GetTotalNumHs()
+            and not any(n.GetFormalCharge() < 0 for n in neighbours)
         ):
             taken = min(charge, atom.GetTotalNumHs())
             atom.SetNumExplicitHs(atom.GetTotalNumHs() - taken)
@@ -235,11 +237,7 @@ def _carboxyl_sites(mol: Chem.Mol) -> tuple[int, ...]:
     sites: list[int] = []
     wrong: list[str] = []
     for carbon, _, _ in mol.GetSubstructMatches(_ANY_CARBOXYL):
-        others = [
-            n
-            for n in mol.GetAtomWithIdx(carbon).GetNeighbors()
-            if n.GetAtomicNum() != 8 or n.GetDegree() > 1
-        ]
+        others = [n for n in mol.GetAtomWithIdx(carbon).GetNeighbors() if n.GetAtomicNum() != 8 or n.GetDegree() > 1]
         if not others or others[0].GetAtomicNum() == 6:
             if carbon not in sites:
                 sites.append(carbon)

@@ -122,11 +122,34 @@ def _whole(bond: Chem.Bond) -> int:
     return 1 if bond.GetIsAromatic() else int(bond.GetBondTypeAsDouble())
 
 
-def unit_name(kind: str, graph: Graph, groups: list[Group], unit: Collection[int]) -> str:
-    """Name of a unit; where there is no short one, what its groups are and its formula."""
+#: Groups that end in a hydrogen by themselves and link where they carry something.
+_LINKING = {
+    "hydroxy": "oxy",
+    "sulfanyl": "thio",
+    "formyl": "carbonyl",
+    "carboxy": "oxycarbonyl",
+    "formyloxy": "carbonyloxy",
+    "formamido": "carbonylamino",
+    "hydroxyimino": "oxyimino",
+}
+
+
+def unit_name(kind: str, graph: Graph, groups: list[Group], unit: Collection[int], carries: bool) -> str:
+    """Name of a unit; where there is no short one, what its groups are and its formula.
+
+    Parameters
+    ----------
+    kind : str
+        From `unit_kind`.
+    graph : Graph
+    groups : list of Group
+    unit : collection of int
+    carries : bool
+        Whether other units hang on it.
+    """
     known = _names().get(kind)
     if known is not None:
-        return known
+        return _LINKING.get(known, known) if carries else known
     from qsar.constants.functional_groups import functional_groups
 
     labels = functional_groups()

@@ -126,8 +126,9 @@ def decompose(acid: Acid, site: int, ionised: frozenset[int] = frozenset()) -> D
     rank = list(Chem.CanonicalRankAtoms(acid.mol, breakTies=True))
     units.sort(key=lambda unit: (min(distance[a] for a in unit), min(rank[a] for a in unit)))
     owner = {a: k for k, unit in enumerate(units) for a in unit}
+    carrying = {owner.get(b) for a, k in owner.items() for b in graph.neighbours[a] if owner.get(b, k) < k}
     found: list[Substituent] = []
-    for unit in units:
+    for k, unit in enumerate(units):
         first = min(unit, key=lambda a: (distance[a], rank[a]))
         path = _path(graph, distance, rank, first, unit)
         atoms = (first, *sorted(a for a in unit if a != first))
@@ -136,7 +137,7 @@ def decompose(acid: Acid, site: int, ionised: frozenset[int] = frozenset()) -> D
         kind = unit_kind(acid.mol, unit, inner, ionised, protonated)
         found.append(
             Substituent(
-                unit_name(kind, graph, groups, unit),
+                unit_name(kind, graph, groups, unit, k in carrying),
                 kind,
                 atoms,
                 path,

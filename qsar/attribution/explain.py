@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from itertools import combinations
 from typing import TYPE_CHECKING
 from weakref import WeakKeyDictionary
@@ -324,7 +324,7 @@ def _assemble(game: _Game, evaluator: Evaluator, coverage: float) -> Explanation
         len(set(game.keys.values())),
         tuple(flagged),
         game.step,
-        _notes(game),
+        _notes(game, table.mean(axis=1)),
     )
 
 
@@ -421,15 +421,15 @@ def _electronegativity(acid: Acid, substituent: Substituent) -> float | None:
         return None
 
 
-def _notes(game: _Game) -> tuple[str, ...]:
+def _notes(game: _Game, table: Floats) -> tuple[str, ...]:
     notes = []
-    if not game.shares.exact:
+    if game.shares.samples is not None:
+        worst = float(game.shares.sampling_error(table).max())
         notes.append(
-            f"{game.forest.n} substituents: sampled over {len(game.shares.samples or ())} orders; the standard "
-            "error of sampling is part of each interval"
+            f"{game.forest.n} substituents: sampled over {len(game.shares.samples)} orders, standard error of a "
+            f"contribution at most {worst:.2f}, which is part of each interval"
         )
-    before = {g for g in _cations(game.acid.smiles)}
-    if not before and _cations(game.parent):
+    if not _cations(game.acid.smiles) and _cations(game.parent):
         notes.append("an amine is protonated in the parent and not in the acid")
     return tuple(notes)
 
@@ -440,6 +440,3 @@ def _cations(smiles: str) -> list[str]:
 
     mol = Chem.MolFromSmiles(smiles)
     return [g.kind for g in perceive(Graph.from_mol(mol)) if g.kind in CATIONIC]
-
-
-__all__ = ["Explained", "explain", "explain_many", "replace"]

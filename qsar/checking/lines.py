@@ -18,7 +18,7 @@ from qsar.constants import Substituent, substituents
 BENZOIC = 4.20
 """pKa of benzoic acid, from which Hammett's constants are counted (Hansch, Leo, Taft 1991)."""
 
-IONISED_GROUPS = frozenset({"NH2", "NHCH3", "N(CH3)2", "NHC2H5", "N(C2H5)2", "NHNH2", "CO2H", "CO2-"})
+IONISED_GROUPS = frozenset({"NH2", "NHCH3", "N(CH3)2", "NHC2H5", "N(C2H5)2", "NHNH2", "CO2H"})
 """Groups that gain a proton before the carboxyl group loses its own, or are a second carboxyl group."""
 
 HINDERED_BELOW = -1.0
@@ -89,9 +89,7 @@ def fit(points: Sequence[Point]) -> Line:
         If there are too few points.
     """
     if len({p.constant for p in points}) < 3:
-        raise ValueError(
-            f"{len(points)} acids of this series in the table; a line needs three different groups"
-        )
+        raise ValueError(f"{len(points)} acids of this series in the table; a line needs three different groups")
     x = np.array([p.constant for p in points])
     y = np.array([p.row.pka for p in points])
     slope, intercept = np.polyfit(x, y, 1)
@@ -108,23 +106,21 @@ def left_out(points: Sequence[Point]) -> list[float]:
     ]
 
 
-def hammett_points(rows: Iterable[TableRow], parent: str = "c1cccc(C(=O)O)c1") -> list[Point]:
+def hammett_points(rows: Iterable[TableRow]) -> list[Point]:
     """Acids of a table with one substituent in meta or para position and its sigma constant.
 
     Parameters
     ----------
     rows : iterable of TableRow
-    parent : str
-        SMILES that begins at the meta carbon; the default is benzoic acid.
 
     Returns
     -------
     list of Point
-        Amino groups and second carboxyl groups are left out: their acids are not one species.
+        Amino and ionic groups and second carboxyl groups are left out.
     """
     wanted: dict[str, tuple[str, float]] = {}
     for group in substituents():
-        if group.group in IONISED_GROUPS:
+        if _ionised(group):
             continue
         for position, sigma in (("m", group.sigma_meta), ("p", group.sigma_para)):
             if sigma is not None:
@@ -147,7 +143,7 @@ def taft_points(rows: Iterable[TableRow]) -> list[Point]:
     for group in substituents():
         if group.taft_star is None or group.es is None or group.es < HINDERED_BELOW:
             continue
-        if group.group in IONISED_GROUPS or not _saturated_end(group):
+        if _ionised(group) or not _saturated_end(group):
             continue
         wanted[_joined(group, "C(=O)O")] = (group.group, group.taft_star)
     return [Point(row, *wanted[row.smiles]) for row in rows if row.step == 1 and row.smiles in wanted]
@@ -186,6 +182,10 @@ def _joined(group: Substituent, rest: str) -> str:
     joined.RemoveAtom(dummy.GetIdx())
     Chem.SanitizeMol(joined)
     return str(Chem.MolToSmiles(joined, isomericSmiles=False))
+
+
+def _ionised(group: Substituent) -> bool:
+    return group.group in IONISED_GROUPS or Chem.GetFormalCharge(Chem.MolFromSmiles(group.smiles)) != 0
 
 
 def _saturated_end(group: Substituent) -> bool:

@@ -97,9 +97,7 @@ def read_rows(path: Path) -> list[TableRow]:
             reader = csv.DictReader(handle)
             missing = [column for column in COLUMNS if column not in (reader.fieldnames or ())]
             if missing:
-                raise UserError(
-                    f"{path.name}: no column {', '.join(missing)}; the table needs {', '.join(COLUMNS)}"
-                )
+                raise UserError(f"{path.name}: no column {', '.join(missing)}; the table needs {', '.join(COLUMNS)}")
             return [_row(path.name, line, row) for line, row in enumerate(reader, start=2)]
     except OSError as error:
         raise UserError(f"cannot read {path}: {error.strerror}") from error

@@ -36,9 +36,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         help="file of the IUPAC Digitized pKa Dataset (release v2.4 or its header), or the folder that holds "
         f"{OPEN_ROWS}; it is compared with and never copied (default: QSAR_OPEN_DATA)",
     )
-    parser.add_argument(
-        "--plots", type=Path, metavar="FOLDER", help="also draw the table, as PNG files in FOLDER"
-    )
+    parser.add_argument("--plots", type=Path, metavar="FOLDER", help="also draw the table, as PNG files in FOLDER")
 
 
 def run(args: argparse.Namespace) -> int:
@@ -78,8 +76,7 @@ def _counts(rows: Sequence[TableRow]) -> list[str]:
     by_kind = ", ".join(f"{kind} {sum(kind in found for found in kinds)}" for kind in KINDS)
     families = Counter(family for _, family in {(row.smiles, row.family) for row in rows})
     return [
-        f"{len(rows)} steps of {len({row.smiles for row in rows})} acids; "
-        f"{checked} ({share}) carry a check: {by_kind}",
+        f"{len(rows)} steps of {len({row.smiles for row in rows})} acids; {checked} ({share}) carry a check: {by_kind}",
         "acids by family: " + ", ".join(f"{name} {count}" for name, count in families.most_common()),
     ]
 

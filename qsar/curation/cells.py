@@ -7,12 +7,12 @@ from dataclasses import dataclass, field
 
 _SUPERSCRIPTS = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁻⁺", "0123456789-+")
 _NUMBER = r"[+-]?(?:\d+(?:[.,]\d+)?|[.,]\d+)(?:e[+-]?\d+)?"
-_ONE = re.compile(_NUMBER)
+_ONE = re.compile(_NUMBER, re.IGNORECASE)
 _POWER = re.compile(r"(?<=\d)\s*[x×·*]\s*10\s*(?:\^|\*\*)?\s*\(?([+-]?\d+)\)?", re.IGNORECASE)
 _PREFIX = re.compile(r"^(p\s*k\s*_?\s*[ab]?\d?|k\s*_?\s*a\d?)\s*[=:]?\s*(?=[-+<>≤≥~≈.\d])", re.IGNORECASE)
 _TEMPERATURE = re.compile(rf"[(,;@]?\s*(?:at\s+|t\s*=\s*)?({_NUMBER})\s*°?\s*C\b\s*\)?", re.IGNORECASE)
 _STRENGTH = re.compile(rf"[(,;@]?\s*\b(?:at\s+)?I\s*=\s*({_NUMBER})\s*(?:M|mol/L)?\s*\)?", re.IGNORECASE)
-_SPREAD = re.compile(rf"(?:±|\+/-|\+-)\s*({_NUMBER})")
+_SPREAD = re.compile(rf"(?:±|\+/-|\+-)\s*({_NUMBER})", re.IGNORECASE)
 _IN_BRACKETS = re.compile(r"(\d+[.,](\d+))\((\d{1,2})\)")
 _RANGE = re.compile(rf"^{_NUMBER}\s*(?:-|–|—|\bto\b)\s*\d", re.IGNORECASE)
 _LIMIT = re.compile(r"^\s*(<|>|≤|≥|=<|>=|less than|more than|below|above|under|over)\s*", re.IGNORECASE)

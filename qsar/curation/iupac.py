@@ -182,9 +182,7 @@ def sort_rows(rows: Sequence[Mapping[str, str]]) -> OpenData:
         chosen = [_choose(smiles, step, found) for step, found in sorted(placed.items())]
         if any(a.pka >= b.pka for a, b in pairwise(chosen)):
             reason = "the steps of this acid do not rise"
-            excluded += [
-                Excluded(r.line, r.given, r.text, reason) for found in placed.values() for r in found
-            ]
+            excluded += [Excluded(r.line, r.given, r.text, reason) for found in placed.values() for r in found]
             continue
         steps += chosen
     return OpenData(steps, sorted(excluded, key=lambda e: e.line))
@@ -241,7 +239,7 @@ def _read(line: int, row: Mapping[str, str]) -> _Row | str:
 def _place(rows: list[_Row]) -> tuple[dict[int, list[_Row]], list[Excluded]]:
     """Give each row of one acid the carboxyl step that it measures."""
     acid = rows[0].acid
-    counted = _zwitterion_steps(rows) if rules.is_zwitterion(acid) else None
+    counted = _zwitterion_steps(rows) if rules.count_bases(acid) else None
     placed: dict[int, list[_Row]] = defaultdict(list)
     refused = []
     for row in rows:
@@ -279,19 +277,20 @@ def _zwitterion_steps(rows: Iterable[_Row]) -> dict[int, int]:
 
     Each laboratory counts in its own way, so the constants of one reference are looked at together: those
     below :data:`qsar.curation.iupac_rules.ZWITTERION_LIMIT` belong to the carboxyl groups, in rising order,
-    provided that there are as many as there are carboxyl groups.
+    provided that there are as many as there are carboxyl groups. With several bases the weaker one can come
+    down to the carboxyl groups; a series of several carboxyl groups must then hold every proton.
     """
     series: dict[tuple[bool, str], dict[int | None, list[_Row]]] = defaultdict(lambda: defaultdict(list))
     for row in rows:
         series[row.label.base, row.reference][row.label.number].append(row)
     steps = {}
     for by_number in series.values():
-        medians = sorted(
-            (statistics.median(r.value for r in found), n or 0) for n, found in by_number.items()
-        )
+        medians = sorted((statistics.median(r.value for r in found), n or 0) for n, found in by_number.items())
         low = [place for median, place in medians if median < rules.ZWITTERION_LIMIT]
-        sites = len(next(iter(by_number.values()))[0].acid.sites)
-        if len(low) == sites:
+        acid = next(iter(by_number.values()))[0].acid
+        sites, bases = len(acid.sites), rules.count_bases(acid)
+        complete = len(by_number) >= sites + bases
+        if len(low) == sites and (complete or min(sites, bases) == 1):
             for step, place in enumerate(low, start=1):
                 steps.update({row.line: step for row in by_number[place or None]})
     return steps

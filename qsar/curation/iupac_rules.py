@@ -137,9 +137,7 @@ def ionic_strength(remarks: str) -> float | None:
 def kind_of_constant(remarks: str) -> str:
     """Say "mixed", "concentration", or nothing where the remarks do not say."""
     lower = remarks.lower()
-    return next(
-        (kind for kind in ("mixed", "concentration") if f'{kind}"' in lower or f"{kind} const" in lower), ""
-    )
+    return next((kind for kind in ("mixed", "concentration") if f'{kind}"' in lower or f"{kind} const" in lower), "")
 
 
 _UNCLEAR_NITROGEN = frozenset({"amino", "pyridinium", "hydrazino", "hydroxyamino", "imino"})
@@ -156,9 +154,9 @@ def unclear_nitrogen(acid: Acid) -> bool:
     return False
 
 
-def is_zwitterion(acid: Acid) -> bool:
-    """Whether the acid has a base that holds its proton while the carboxyl proton leaves."""
-    return any(group.kind in _STRONG_BASES for group in perceive(acid.graph))
+def count_bases(acid: Acid) -> int:
+    """Number of groups that hold a proton while the carboxyl proton leaves."""
+    return sum(group.kind in _STRONG_BASES for group in perceive(acid.graph))
 
 
 def structure_refusal(acid: Acid) -> str | None:

@@ -15,8 +15,8 @@ _COLUMNS = columns(
     "anions anion_g50 anion_g75 anion_inverse anion_nearest "
     "carboxyls carboxyl_g40 carboxyl_g70 carboxyl_nearest carboxyl_path_bulk carboxyl_path_quaternary "
     "carboxyl_path_unsaturated carboxyl_cis carboxyl_geminal net_charge "
-    "cation_in_ring cation_pairs anion_path_bulk anion_path_quaternary geminal_bulk geminal_bulk_anion geminal_small_ring "
-    "geminal_small_ring_anion anion_cis vicinal_splay vicinal_splay_anion"
+    "cation_in_ring cation_pairs anion_path_bulk anion_path_quaternary geminal_bulk geminal_bulk_anion "
+    "geminal_small_ring geminal_small_ring_anion anion_cis vicinal_splay vicinal_splay_anion"
 )
 
 
@@ -98,7 +98,7 @@ def _between(view: SiteView, neutral: list[Term], ionised: list[Term]) -> list[f
 
 
 def _geminal_crowd(view: SiteView) -> tuple[float, float]:
-    """Branching of the alkyl groups on the alpha carbon, and 1 where it is in a three- or 1/2 in a four-membered ring."""
+    """Branching of the alkyl groups on the alpha carbon, and 1 or 1/2 for it in a three- or four-membered ring."""
     if view.alpha < 0 or view.molecule.unsaturated[view.alpha]:
         return 0.0, 0.0
     groups = [b for b in view.carbons_on(view.alpha) if view.term_of.get(b) is None]
@@ -116,7 +116,10 @@ def _splay(view: SiteView, term: Term) -> float:
     graph, alpha = view.graph, view.alpha
     if alpha < 0 or not view.molecule.unsaturated[alpha] or term.bonds != 2:
         return 0.0
-    carrier = next((b for b in graph.neighbours[term.anchor] if view.distance[b] == 2 and b in graph.neighbours[alpha]), -1)
+    carrier = next(
+        (b for b in graph.neighbours[term.anchor] if view.distance[b] == 2 and b in graph.neighbours[alpha]),
+        -1,
+    )
     if carrier < 0 or not graph.order(alpha, carrier) > 1.0:
         return 0.0
     sizes = [len(ring) for ring in graph.rings if alpha in ring and carrier in ring]
@@ -134,7 +137,9 @@ def _path(view: SiteView, term: Term) -> tuple[float, float, float]:
     skip = view.molecule.set_apart
     bulk = quaternary = unsaturated = 0.0
     for x in on_path:
-        side = [b for b in graph.neighbours[x] if b not in skip and b not in on_path and b not in (view.site, term.anchor)]
+        side = [
+            b for b in graph.neighbours[x] if b not in skip and b not in on_path and b not in (view.site, term.anchor)
+        ]
         bulk += len(side)
         if view.molecule.unsaturated[x]:
             unsaturated += 1.0
@@ -149,7 +154,10 @@ def _cis(view: SiteView, term: Term) -> float:
     if pair is not None:
         return float(pair)
     graph = view.graph
-    carrier = next((b for b in graph.neighbours[term.anchor] if view.distance[b] == term.bonds and b not in term.atoms), -1)
+    carrier = next(
+        (b for b in graph.neighbours[term.anchor] if view.distance[b] == term.bonds and b not in term.atoms),
+        -1,
+    )
     for index, ring in enumerate(graph.rings):
         if view.alpha in ring and carrier in ring and carrier != view.alpha:
             mine = graph.side.get((index, view.alpha, view.site))

@@ -35,9 +35,7 @@ def _rigid(view: SiteView, anchor: int) -> bool:
         return pair > 0
     if view.alpha < 0 or not view.graph.aromatic[view.alpha]:
         return False
-    return any(
-        b in view.graph.neighbours[view.alpha] and view.graph.aromatic[b] for b in view.graph.neighbours[anchor]
-    )
+    return any(b in view.graph.neighbours[view.alpha] and view.graph.aromatic[b] for b in view.graph.neighbours[anchor])
 
 
 def _compute(view: SiteView) -> list[float]:

@@ -108,15 +108,27 @@ def _scaffold(view: SiteView) -> list[float]:
     ]
 
 
-_PAULING = {1: 2.20, 5: 2.04, 6: 2.55, 7: 3.04, 8: 3.44, 9: 3.98, 14: 1.90, 15: 2.19, 16: 2.58, 17: 3.16, 34: 2.55, 35: 2.96, 53: 2.66}
+_PAULING = {
+    1: 2.20,
+    5: 2.04,
+    6: 2.55,
+    7: 3.04,
+    8: 3.44,
+    9: 3.98,
+    14: 1.90,
+    15: 2.19,
+    16: 2.58,
+    17: 3.16,
+    34: 2.55,
+    35: 2.96,
+    53: 2.66,
+}
 
 
 def _atom_electronegativity(view: SiteView) -> float:
     """Electronegativity of the scaffold's hetero atoms in excess of carbon's, 0.5 a bond."""
     graph, dist = view.graph, view.distance
-    return sum(
-        (_PAULING[graph.numbers[a]] - 2.55) * 0.5 ** (dist[a] - 2) for a in view.atoms if graph.numbers[a] != 6
-    )
+    return sum((_PAULING[graph.numbers[a]] - 2.55) * 0.5 ** (dist[a] - 2) for a in view.atoms if graph.numbers[a] != 6)
 
 
 def _compute(view: SiteView) -> list[float]:

@@ -38,4 +38,3 @@ def site_descriptors(view: SiteView) -> list[float]:
     for effect in EFFECTS:
         values.extend(effect.compute(view))
     return [round(v, 10) for v in values]
-

@@ -62,9 +62,7 @@ def _hetero(view: SiteView) -> list[float]:
     out = [0.0] * 10
     system = view.alpha_system
     if system is None:
-        out[9] = sum(
-            1.0 for ring in graph.rings if alpha in ring for a in ring if graph.numbers[a] != 6
-        )
+        out[9] = sum(1.0 for ring in graph.rings if alpha in ring for a in ring if graph.numbers[a] != 6)
         return out
     out[0] = float(graph.ring_size[alpha] == 5)
     for a, position in ring_positions(view, system, alpha).items():

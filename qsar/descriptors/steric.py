@@ -17,7 +17,16 @@ _COLUMNS = columns(
     "ortho_carbonyl ortho_ring_carbonyl alpha_bulk beta_bulk atoms_at_three atoms_at_four atoms_at_five"
 )
 _HALOGEN = ("fluoro", "chloro", "bromo", "iodo")
-_CARBONYL = ("ketone", "aldehyde", "alkoxycarbonyl", "carbamoyl", "carboxyl", "carboxylate", "phenyl", "sulfonyl")
+_CARBONYL = (
+    "ketone",
+    "aldehyde",
+    "alkoxycarbonyl",
+    "carbamoyl",
+    "carboxyl",
+    "carboxylate",
+    "phenyl",
+    "sulfonyl",
+)
 _BRANCH_BULK = (0.52, 0.56, 0.76, 1.24)
 
 

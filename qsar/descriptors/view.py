@@ -131,11 +131,7 @@ class SiteView:
         alpha = [b for b in graph.neighbours[site] if b not in blocked]
         self.alpha = alpha[0] if alpha else -1
         self.through_pi = self._through_pi()
-        self.atoms = [
-            a
-            for a, d in enumerate(self.distance)
-            if d > 0 and a not in molecule.set_apart
-        ]
+        self.atoms = [a for a, d in enumerate(self.distance) if d > 0 and a not in molecule.set_apart]
         constants = functional_groups()
         self.withdrawing = [
             Term(g.kind, g.atoms, g.atoms[0], self.distance[c], self.through_pi[c], constants[g.kind])
@@ -152,9 +148,7 @@ class SiteView:
         graph, dist, unsaturated = self.graph, self.distance, self.molecule.unsaturated
         flags = [False] * len(dist)
         for a in sorted((x for x, d in enumerate(dist) if d > 1), key=dist.__getitem__):
-            flags[a] = all(
-                flags[p] or unsaturated[p] for p in graph.neighbours[a] if dist[p] == dist[a] - 1
-            )
+            flags[a] = all(flags[p] or unsaturated[p] for p in graph.neighbours[a] if dist[p] == dist[a] - 1)
         return flags
 
     def _term(self, group: Group, constants: dict[str, FunctionalGroup]) -> Term:
@@ -173,9 +167,11 @@ class SiteView:
         elif kind in ("ether", "sulfide"):
             far = [b for b in graph.neighbours[anchor] if dist[b] > dist[anchor]]
             aryl = any(self.molecule.unsaturated[b] for b in far)
-            kind = {("ether", True): "aryloxy", ("ether", False): "alkoxy", ("sulfide", True): "arylthio"}.get(
-                (kind, aryl), "alkylthio"
-            )
+            kind = {
+                ("ether", True): "aryloxy",
+                ("ether", False): "alkoxy",
+                ("sulfide", True): "arylthio",
+            }.get((kind, aryl), "alkylthio")
         return self._oriented(kind, group, anchor, constants)
 
     def _oriented(self, kind: str, group: Group, anchor: int, constants: dict[str, FunctionalGroup]) -> Term:

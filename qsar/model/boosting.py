@@ -6,7 +6,9 @@ its trees, so that a bundle needs neither scikit-learn nor pickle.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -82,7 +84,9 @@ class Trees:
         return result
 
 
-def fit_booster(x: Floats, y: Floats, weight: Floats, lowers: NDArray[np.bool_], settings: BoostingSettings, seed: int):  # type: ignore[no-untyped-def]
+def fit_booster(
+    x: Floats, y: Floats, weight: Floats, lowers: NDArray[np.bool_], settings: BoostingSettings, seed: int
+) -> Any:
     """Fit one booster whose prediction never rises along the columns where `lowers` is true.
 
     Parameters
@@ -112,7 +116,7 @@ def fit_booster(x: Floats, y: Floats, weight: Floats, lowers: NDArray[np.bool_],
     ).fit(x, y, sample_weight=weight)
 
 
-def trees_of(boosters: list) -> Trees:  # type: ignore[type-arg]
+def trees_of(boosters: Sequence[Any]) -> Trees:
     """Copy the nodes of fitted boosters (all with the same number of iterations) into arrays."""
     feature, threshold, left, right, roots, depth = [], [], [], [], [], 0
     base = 0

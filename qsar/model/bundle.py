@@ -55,6 +55,7 @@ ARRAY_TYPES: dict[str, tuple[str, int]] = {
     "neighbour_points": ("f", 2),
     "scale_coefficients": ("f", 1),
     "scores": ("f", 1),
+    "stranger_scores": ("f", 1),
     "score_member": ("i", 1),
     "score_label": ("i", 1),
     "library_step": ("i", 1),
@@ -90,6 +91,7 @@ def arrays_of(model: Model) -> dict[str, NDArray[Any]]:
         "neighbour_points": model.neighbours.points,
         "scale_coefficients": model.calibration.coefficients,
         "scores": model.calibration.scores,
+        "stranger_scores": model.calibration.stranger_scores,
         "score_member": model.calibration.member,
         "score_label": model.calibration.label,
         "library_step": library.step,
@@ -126,7 +128,7 @@ def save(model: Model, folder: Path) -> None:
     except OSError as error:
         raise UserError(f"cannot create {folder}: {error.strerror}") from error
     buffer = io.BytesIO()
-    np.savez_compressed(buffer, **arrays_of(model))
+    np.savez_compressed(buffer, **arrays_of(model))  # type: ignore[arg-type]
     data = buffer.getvalue()
     card = {**model.card, "arrays_sha256": hashlib.sha256(data).hexdigest()}
     with atomic_path(folder / ARRAYS) as path:
@@ -219,7 +221,15 @@ def _read_arrays(path: Path, digest: str) -> dict[str, NDArray[Any]]:
             _check_archive(path, archive)
         with np.load(io.BytesIO(data), allow_pickle=False) as stored:
             arrays = {name: stored[name] for name in ARRAY_TYPES}
-    except (zipfile.BadZipFile, zlib.error, ValueError, EOFError, KeyError, NotImplementedError, RuntimeError) as error:
+    except (
+        zipfile.BadZipFile,
+        zlib.error,
+        ValueError,
+        EOFError,
+        KeyError,
+        NotImplementedError,
+        RuntimeError,
+    ) as error:
         raise UserError(f"{path}: not an archive of plain arrays ({error}); not loaded") from error
     for name, (kind, dimensions) in ARRAY_TYPES.items():
         array = arrays[name]
@@ -269,11 +279,11 @@ def _assemble(card: dict[str, Any], a: dict[str, NDArray[Any]]) -> Model:
     )
     if len(smiles) != len(library.pka):
         raise ValueError("its list of measured acids has another length than their values")
-    counts = {
-        tuple(key): int(n) for key, n in zip(_unpack(a["domain_text"]), a["domain_counts"], strict=True)
-    }
+    counts = {tuple(key): int(n) for key, n in zip(_unpack(a["domain_text"]), a["domain_counts"], strict=True)}
     domain = Domain(counts, float(card["borderline_above"]), float(card["outside_above"]))
-    calibration = Calibration(a["scale_coefficients"], a["scores"], a["score_member"], a["score_label"])
+    calibration = Calibration(
+        a["scale_coefficients"], a["scores"], a["stranger_scores"], a["score_member"], a["score_label"]
+    )
     neighbours = Neighbours(a["neighbour_weights"], a["neighbour_points"])
     return Model(card, members, neighbours, calibration, domain, library)
 
@@ -296,6 +306,7 @@ def _check_shapes(a: dict[str, NDArray[Any]], trees: Trees) -> None:
         "neighbour_weights": (free + lowers,),
         "neighbour_points": (steps, free + lowers),
         "scores": (steps,),
+        "stranger_scores": (steps,),
         "score_member": (steps,),
         "score_label": (steps,),
         "library_step": (steps,),
@@ -320,9 +331,7 @@ def _check_shapes(a: dict[str, NDArray[Any]], trees: Trees) -> None:
 def settings_from(stored: dict[str, Any]) -> Settings:
     """Settings from the card."""
     plain = {k: v for k, v in stored.items() if k not in ("kernel", "boosting")}
-    return Settings(
-        **plain, kernel=KernelSettings(**stored["kernel"]), boosting=BoostingSettings(**stored["boosting"])
-    )
+    return Settings(**plain, kernel=KernelSettings(**stored["kernel"]), boosting=BoostingSettings(**stored["boosting"]))
 
 
 def settings_to(settings: Settings) -> dict[str, Any]:

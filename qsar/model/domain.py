@@ -22,7 +22,12 @@ Floats = NDArray[np.float64]
 INSIDE, BORDERLINE, OUTSIDE, UNUSABLE = "inside", "borderline", "outside", "unusable"
 VERDICTS = (INSIDE, BORDERLINE, OUTSIDE)
 _FEW = 2
-_PLACES = {1: "on the α atom", 2: "two bonds from the COOH", 3: "three bonds from the COOH", 4: "further away"}
+_PLACES = {
+    1: "on the α atom",
+    2: "two bonds from the COOH",
+    3: "three bonds from the COOH",
+    4: "further away",
+}
 _RING_PLACES = {1: "ortho", 2: "meta", 3: "para"}
 
 
@@ -62,7 +67,9 @@ def environment(view: SiteView) -> str:
     if any(order == 3.0 for order in graph.orders[alpha]):
         return "an alkynyl carbon"
     if view.molecule.unsaturated[alpha]:
-        return "an unsaturated carbon" + (f" in a {graph.ring_size[alpha]}-membered ring" if graph.ring_size[alpha] else "")
+        return "an unsaturated carbon" + (
+            f" in a {graph.ring_size[alpha]}-membered ring" if graph.ring_size[alpha] else ""
+        )
     if graph.ring_size[alpha]:
         return f"a saturated carbon of a {graph.ring_size[alpha]}-membered ring"
     return "a saturated carbon of a chain"
@@ -101,7 +108,7 @@ class Domain:
         less : int
             Acids to take off each count: 1 for an acid that was counted itself.
         """
-        return sum(1.0 / (1.0 + max(self.counts.get(f, 0) - less, 0)) for f in set(features_seen(view)))
+        return sum(1.0 / (1.0 + max(self.counts.get(f, 0) - less, 0)) for f in dict.fromkeys(features_seen(view)))
 
     def judge(self, view: SiteView, expected: float, nearest: str, distance: float) -> tuple[str, list[str]]:
         """Verdict and reasons of one step.

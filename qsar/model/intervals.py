@@ -5,7 +5,9 @@ interval at level :math:`1-\alpha` lies between the :math:`\alpha`-quantiles of
 
 .. math:: \hat f_{-k(i)}(x) \pm r_i\, s(x), \qquad r_i = |y_i - \hat f_{-k(i)}(x_i)| / s(x_i)
 
-over the measured steps i of the same class. Its guarantee is marginal: at least :math:`1 - 2\alpha` of exchangeable
+over the measured steps i of the same class. A new acid is sometimes an analogue of measured ones and sometimes a
+stranger, so every measured step gives two scores: one with its acid left out among others drawn at random, one with
+all its near analogues left out too. Its guarantee is marginal: at least :math:`1 - 2\alpha` of exchangeable
 acids, in practice close to :math:`1-\alpha`. The scale s is the expected error, a non-negative linear function of
 evidence of difficulty fitted to the out-of-fold errors, which makes intervals differ between easy and hard acids.
 """
@@ -22,7 +24,15 @@ Ints = NDArray[np.int64]
 
 #: Classes whose scores are kept apart: monobasic, first and later steps of polybasic acids, zwitterions.
 CLASSES = ("monobasic", "first of several", "later of several", "zwitterion")
-EVIDENCE = ("constant", "nearest distance", "mean of three", "errors near by", "booster", "closure defect", "sparse groups")
+EVIDENCE = (
+    "constant",
+    "nearest distance",
+    "mean of three",
+    "errors near by",
+    "booster",
+    "closure defect",
+    "sparse groups",
+)
 _LEAST_OF_CLASS = 40
 
 
@@ -36,6 +46,8 @@ class Calibration:
         Expected absolute error per unit of evidence.
     scores : ndarray, shape (n_steps,)
         Normalised absolute out-of-fold residuals.
+    stranger_scores : ndarray, shape (n_steps,)
+        The same with the acid's near analogues left out too.
     member : ndarray of int, shape (n_steps,)
         Member that never saw the step's acid.
     label : ndarray of int, shape (n_steps,)
@@ -44,6 +56,7 @@ class Calibration:
 
     coefficients: Floats
     scores: Floats
+    stranger_scores: Floats
     member: Ints
     label: Ints
 
@@ -75,8 +88,9 @@ class Calibration:
             used = np.flatnonzero(self.label == value)
             if len(used) < _LEAST_OF_CLASS:
                 used = np.arange(len(self.scores))
-            centre = by_member[np.ix_(self.member[used], rows)]
-            reach = self.scores[used][:, None] * scale[rows][None]
+            centre = np.tile(by_member[np.ix_(self.member[used], rows)], (2, 1))
+            both = np.concatenate([self.scores[used], self.stranger_scores[used]])
+            reach = both[:, None] * scale[rows][None]
             low[rows] = _order_statistic(centre - reach, 1.0 - coverage, upper=False)
             high[rows] = _order_statistic(centre + reach, coverage, upper=True)
         return low, high

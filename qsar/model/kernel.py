@@ -68,6 +68,7 @@ class Scaling:
         return cls(free.mean(axis=0), scale)
 
     def __call__(self, free: Floats) -> Floats:
+        """Scaled rows of `free`, clipped; shape (n, n_free)."""
         scaled: Floats = np.clip((free - self.mean) * self.scale, -CLIP, CLIP)
         return scaled
 

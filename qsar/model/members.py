@@ -6,7 +6,7 @@ out-of-fold predictions, CV+ intervals and the spread all come from the same fit
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -14,8 +14,8 @@ from numpy.typing import NDArray
 
 from qsar.descriptors import LOWERS
 from qsar.model.boosting import BoostingSettings, Trees, fit_booster, trees_of
-from qsar.model.kernel import KernelSettings, Scaling, covariance, fit_trend
-from qsar.model.training_set import TrainingSet, latent_targets
+from qsar.model.kernel import KernelSettings, KernelTrend, Scaling, covariance, fit_trend
+from qsar.model.training_set import Targets, TrainingSet, latent_targets
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -101,14 +101,16 @@ def fold_of_acids(n_acids: int, settings: Settings) -> Ints:
 
 
 @dataclass(frozen=True)
-class _Member:
+class Member:
+    """One fitted member: weights of all training edges, slopes, offset and a scikit-learn booster."""
+
     dual: Floats
     slopes: Floats
     offset: float
     booster: object
 
 
-def fit_member(data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], settings: Settings, seed: int) -> _Member:
+def fit_member(data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], settings: Settings, seed: int) -> Member:
     """Fit trend and booster on the wanted measurements.
 
     Parameters
@@ -120,18 +122,50 @@ def fit_member(data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], s
     seed : int
         For the booster and the inner folds.
     """
+    from threadpoolctl import threadpool_limits
+
+    with threadpool_limits(1):  # sums in one order, so that the arrays do not depend on the number of threads
+        return _fit_member(data, scaling, wanted, settings, seed)
+
+
+def _converged_trend(
+    data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], settings: Settings
+) -> tuple[KernelTrend, Targets]:
+    """Trend and latent micro constants after `settings.rounds` rounds of each other."""
     free, lowers = data.x[:, ~LOWERS], data.x[:, LOWERS]
     micro = np.full(len(data.x), START_NEUTRAL)
     targets = latent_targets(data, micro, wanted)
     for _ in range(settings.rounds):
         trend = fit_trend(
-            free[targets.edge], lowers[targets.edge], targets.value, targets.variance, settings.kernel, scaling
+            free[targets.edge],
+            lowers[targets.edge],
+            targets.value,
+            targets.variance,
+            settings.kernel,
+            scaling,
         )
         micro = trend.predict(free, lowers)
         targets = latent_targets(data, micro, wanted)
     trend = fit_trend(
         free[targets.edge], lowers[targets.edge], targets.value, targets.variance, settings.kernel, scaling
     )
+    return trend, targets
+
+
+def trend_without(data: TrainingSet, members: Members, wanted: NDArray[np.bool_]) -> Floats:
+    """Micro pKa of all edges by a trend fitted to the wanted measurements alone, shape (n_edges,)."""
+    from threadpoolctl import threadpool_limits
+
+    with threadpool_limits(1):
+        trend, _ = _converged_trend(data, members.scaling, wanted, members.settings)
+    return trend.predict(data.x[:, ~LOWERS], data.x[:, LOWERS])
+
+
+def _fit_member(
+    data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], settings: Settings, seed: int
+) -> Member:
+    free, lowers = data.x[:, ~LOWERS], data.x[:, LOWERS]
+    trend, targets = _converged_trend(data, scaling, wanted, settings)
     residual = np.empty(len(targets.edge))
     rng = np.random.default_rng(seed)
     inner = rng.integers(settings.inner_folds, size=len(data.acids))[data.owner[targets.edge]]
@@ -148,11 +182,14 @@ def fit_member(data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], s
     booster = fit_booster(data.x[targets.edge], residual, targets.share, LOWERS, settings.boosting, seed)
     dual = np.zeros(len(data.x))
     np.add.at(dual, targets.edge, trend.dual)
-    return _Member(dual, trend.slopes, trend.offset, booster)
+    return Member(dual, trend.slopes, trend.offset, booster)
 
 
 def fit_members(
-    data: TrainingSet, settings: Settings, done: Callable[[int], object] = lambda _: None
+    data: TrainingSet,
+    settings: Settings,
+    done: Callable[[int], object] = lambda _: None,
+    jobs: int = 1,
 ) -> tuple[Members, Ints]:
     """Fit the ensemble.
 
@@ -162,6 +199,8 @@ def fit_members(
     settings : Settings
     done : callable
         Called with 1 after each member, for progress.
+    jobs : int
+        Processes; the outcome does not depend on it.
 
     Returns
     -------
@@ -169,14 +208,24 @@ def fit_members(
     fold : ndarray of int, shape (n_acids,)
         Member that never saw each acid.
     """
+    from joblib import Parallel, delayed
+
     fold = fold_of_acids(len(data.acids), settings)
     scaling = Scaling.of(data.x[:, ~LOWERS])
     fitted = []
-    for k in range(settings.folds):
-        wanted = fold[data.step_acid] != k
-        fitted.append(fit_member(data, scaling, wanted, settings, settings.seed + 1000 * k))
+    tasks = (
+        delayed(fit_member)(data, scaling, fold[data.step_acid] != k, settings, settings.seed + 1000 * k)
+        for k in range(settings.folds)
+    )
+    for member in Parallel(n_jobs=jobs, return_as="generator")(tasks):
+        fitted.append(member)
         done(1)
-    members = Members(
+    return join_members(data, scaling, fitted, settings), fold
+
+
+def join_members(data: TrainingSet, scaling: Scaling, fitted: Sequence[Member], settings: Settings) -> Members:
+    """Join fitted members, in the order of their folds, into arrays."""
+    return Members(
         settings,
         scaling,
         scaling(data.x[:, ~LOWERS]),
@@ -185,7 +234,6 @@ def fit_members(
         fitted[0].offset,
         trees_of([m.booster for m in fitted]),
     )
-    return members, fold
 
 
 def out_of_fold(data: TrainingSet, members: Members, fold: Ints) -> tuple[Floats, Floats]:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -21,6 +21,9 @@ from qsar.model.members import Members
 from qsar.model.neighbours import Neighbours
 from qsar.model.training_set import dominant_edge
 from qsar.structures import Acid, StructureError, read_acid
+
+if TYPE_CHECKING:
+    from qsar.attribution import Explanation
 
 Floats = NDArray[np.float64]
 _NEAR = 5
@@ -283,6 +286,24 @@ class Model:
                 )
             )
         return finished
+
+    def explain(self, acid: str | Acid, coverage: float = 0.9) -> tuple[Explanation, ...]:
+        """What each substituent of an acid contributed, one `Explanation` a step.
+
+        Parameters
+        ----------
+        acid : str or Acid
+        coverage : float
+            Of the intervals.
+
+        Raises
+        ------
+        StructureError
+            If the structure cannot be used.
+        """
+        from qsar.attribution import explain  # slow to import, and it imports this module
+
+        return explain(self, acid, coverage)
 
 
 def _join(isomers: list[list[StepPrediction]], note: str) -> list[StepPrediction]:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import platform
 from collections.abc import Callable, Sequence
+from dataclasses import replace
 from datetime import date
 from typing import Any
 
@@ -16,11 +17,15 @@ from qsar.model.bundle import KIND, SCHEMA, settings_to
 from qsar.model.domain import Domain
 from qsar.model.intervals import Calibration, fit_scale
 from qsar.model.library import Library
-from qsar.model.members import Members, Settings, fit_members, out_of_fold
+from qsar.model.members import Members, Settings, fit_members, out_of_fold, trend_without
 from qsar.model.model import Model, class_of, evidence_of
-from qsar.model.neighbours import Neighbours
+from qsar.model.neighbours import Neighbours, coordinates
 from qsar.model.training_set import Floats, Ints, TrainingSet, training_set
 from qsar.table import Measurement
+
+
+STRANGER_FOLDS = 5
+ANALOGUE_DISTANCE = 0.2  # pKa units; acids this close are homologues or differ in a remote group
 
 
 def train(
@@ -32,6 +37,7 @@ def train(
     provenance: dict[str, Any] | None = None,
     withhold_structures: bool = False,
     done: Callable[[int], object] = lambda _: None,
+    jobs: int = 1,
 ) -> Model:
     """Train a model.
 
@@ -49,6 +55,8 @@ def train(
         Leave the training acids' structures and names out of the model; neighbours are then shown as values only.
     done : callable
         Called with 1 after each member.
+    jobs : int
+        Processes; the outcome does not depend on it.
 
     Returns
     -------
@@ -57,12 +65,18 @@ def train(
     """
     settings = settings or Settings()
     data = training_set(measurements, weights)
-    members, fold = fit_members(data, settings, done)
+    members, fold = fit_members(data, settings, done, jobs)
     return assemble(data, members, fold, name, provenance or {}, withhold_structures=withhold_structures)
 
 
 def assemble(
-    data: TrainingSet, members: Members, fold: Ints, name: str, provenance: dict[str, Any], *, withhold_structures: bool
+    data: TrainingSet,
+    members: Members,
+    fold: Ints,
+    name: str,
+    provenance: dict[str, Any],
+    *,
+    withhold_structures: bool,
 ) -> Model:
     """Calibrate fitted members and join everything into a model."""
     micro, boosted = out_of_fold(data, members, fold)
@@ -77,22 +91,35 @@ def assemble(
         by_acid.setdefault(int(acid), []).append(view)
     domain = Domain.of(by_acid.values(), np.ones(1))
     error = np.abs(data.pka - without)
-    distances = neighbours.distances(members, x)
     step_fold = fold[data.step_acid]
-    distances[step_fold[:, None] == step_fold[None]] = np.inf  # as if the whole fold had not been measured
-    defect = _defects(data, micro)
+    distances = neighbours.distances(members, x)
     sparse = np.array([domain.sparse(view, less=1) for view in views])
-    evidence = evidence_of(distances, error, np.abs(boosted[dominant]), defect, sparse)
-    coefficients = fit_scale(evidence, error)
+    evidence = evidence_of(
+        _hidden(distances, step_fold), error, np.abs(boosted[dominant]), _defects(data, micro), sparse
+    )
+    strangers, stranger_fold = without_analogues(data, members, neighbours)
+    stranger_error = np.abs(data.pka - data.steps(strangers))
+    stranger_evidence = evidence_of(
+        _hidden(distances, stranger_fold[data.step_acid]),
+        error,
+        np.abs(boosted[dominant]),
+        _defects(data, strangers),
+        sparse,
+    )
+    coefficients = fit_scale(np.vstack([evidence, stranger_evidence]), np.concatenate([error, stranger_error]))
     label = np.array(
         [
             class_of(view, len(data.acids[a].sites), int(step))
             for view, a, step in zip(views, data.step_acid, data.step_number, strict=True)
         ]
     )
-    calibration = Calibration(coefficients, np.zeros(0), step_fold, label)
+    calibration = Calibration(coefficients, np.zeros(0), np.zeros(0), step_fold, label)
     expected = calibration.expected_error(evidence)
-    calibration = Calibration(coefficients, error / expected, step_fold, label)
+    calibration = replace(
+        calibration,
+        scores=error / expected,
+        stranger_scores=stranger_error / calibration.expected_error(stranger_evidence),
+    )
     domain = Domain(domain.counts, float(np.quantile(expected, 0.72)), float(np.quantile(expected, 0.92)))
     library = Library(
         ["" if withhold_structures else data.acids[a].smiles for a in data.step_acid],
@@ -107,6 +134,43 @@ def assemble(
     )
     card = _card(data, members, domain, name, provenance, error, withhold_structures)
     return Model(card, members, neighbours, calibration, domain, library)
+
+
+def _hidden(distances: Floats, fold: Ints) -> Floats:
+    """Distances as if the whole fold of each step had not been measured; `fold` has shape (n_steps,)."""
+    return np.where(fold[:, None] == fold[None], np.inf, distances)
+
+
+def without_analogues(data: TrainingSet, members: Members, neighbours: Neighbours) -> tuple[Floats, Ints]:
+    """Micro pKa of the training edges by trends that saw neither the acid nor its near analogues.
+
+    Acids within `ANALOGUE_DISTANCE` of a leading one stay together (sphere exclusion), and whole groups are dealt
+    out to `STRANGER_FOLDS` folds.
+
+    Returns
+    -------
+    micro : ndarray, shape (n_edges,)
+    fold : ndarray of int, shape (n_acids,)
+    """
+    place = coordinates(members, neighbours.weights, data.x[data.first[:-1]])
+    group = np.full(len(place), -1)
+    for leader in np.random.default_rng(members.settings.seed).permutation(len(place)):
+        if group[leader] < 0:
+            near = np.linalg.norm(place - place[leader], axis=1) < ANALOGUE_DISTANCE
+            group[near & (group < 0)] = leader
+    fold = np.empty(len(place), dtype=np.int64)
+    load = np.zeros(STRANGER_FOLDS)
+    leaders, sizes = np.unique(group, return_counts=True)
+    for leader, size in sorted(zip(leaders, sizes, strict=True), key=lambda pair: -pair[1]):
+        emptiest = int(load.argmin())
+        fold[group == leader] = emptiest
+        load[emptiest] += size
+    micro = np.empty(len(data.x))
+    for k in range(STRANGER_FOLDS):
+        held = fold[data.owner] == k
+        if held.any():
+            micro[held] = trend_without(data, members, fold[data.step_acid] != k)[held]
+    return micro, fold
 
 
 def _view(data: TrainingSet, acid: int, edge: int) -> SiteView:

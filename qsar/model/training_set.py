@@ -166,6 +166,4 @@ def latent_targets(data: TrainingSet, micro: Floats, wanted: NDArray[np.bool_]) 
         values.append(micro[own][at_level] + data.pka[row] - predicted[row])
         variances.append((data.uncertainty[row] ** 2 + _SLACK**2 * (1.0 - share)) / (share * data.weight[row]))
         shares.append(share * data.weight[row])
-    return Targets(
-        np.concatenate(edges), np.concatenate(values), np.concatenate(variances), np.concatenate(shares)
-    )
+    return Targets(np.concatenate(edges), np.concatenate(values), np.concatenate(variances), np.concatenate(shares))

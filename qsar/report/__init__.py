@@ -1,1 +1,5 @@
-"""Plots and pages that show what the table and the model hold."""
+"""One self-contained HTML file about some acids: dossier of the model, figures, evidence, statements to file."""
+
+from qsar.report.html import write_report
+
+__all__ = ["write_report"]

@@ -91,9 +91,7 @@ def _median_first(rows: Sequence[TableRow]) -> float:
 def coverage(rows: Sequence[TableRow]) -> Figure:
     """Number of acids that carry a group at a distance from COOH; empty fields are gaps of the table."""
     counts = group_distances({row.smiles for row in rows})
-    kinds = sorted(
-        {kind for kind, _ in counts}, key=lambda kind: sum(counts[kind, d] for d in range(1, _FARTHEST + 1))
-    )
+    kinds = sorted({kind for kind, _ in counts}, key=lambda kind: sum(counts[kind, d] for d in range(1, _FARTHEST + 1)))
     grid = np.array([[counts[kind, d] for d in range(1, _FARTHEST + 1)] for kind in kinds], dtype=float)
     figure = Figure(figsize=(7.5, 0.26 * len(kinds) + 1.6), layout="constrained")
     axes = figure.add_subplot()

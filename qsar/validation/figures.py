@@ -130,7 +130,7 @@ def expected_against_found(judged: Judged) -> bytes:
 def learners(rows: dict[str, tuple[float, float]], n: int) -> bytes:
     """Error of the model and the baselines in the same folds; bars over the repeats."""
     figure, axes = _axes(5.6, 3.2)
-    for k, (name, (mean, spread)) in enumerate(rows.items()):
+    for k, (mean, spread) in enumerate(rows.values()):
         axes.barh(k, mean, color=BLUE if k == 0 else GREY, height=0.6)
         axes.plot([mean - spread, mean + spread], [k, k], color="black", lw=1.5)
         axes.text(mean + spread, k, f"  {mean:.3f}", va="center")
@@ -179,7 +179,11 @@ def randomised(measured: Permuted, dealt: Sequence[Permuted]) -> bytes:
     figure, axes = _axes(5.4, 3.6)
     axes.axhline(0.0, color="black", lw=0.8)
     axes.plot(
-        [abs(p.correlation) for p in dealt], [p.r2 for p in dealt], "x", color=VERMILION, label=f"permuted ({len(dealt)})"
+        [abs(p.correlation) for p in dealt],
+        [p.r2 for p in dealt],
+        "x",
+        color=VERMILION,
+        label=f"permuted ({len(dealt)})",
     )
     axes.plot([measured.correlation], [measured.r2], "o", color=BLUE, label=f"measured, {measured.r2:.3f}")
     axes.set(
@@ -197,7 +201,14 @@ def williams(judged: Judged, leverage: Leverage) -> bytes:
     for verdict in VERDICTS:
         rows, (colour, marker) = judged.verdict == verdict, VERDICT_STYLE[verdict]
         axes.scatter(
-            leverage.values[rows], residual[rows], s=12, c=colour, marker=marker, linewidths=0.8, alpha=0.7, label=verdict
+            leverage.values[rows],
+            residual[rows],
+            s=12,
+            c=colour,
+            marker=marker,
+            linewidths=0.8,
+            alpha=0.7,
+            label=verdict,
         )
     axes.axvline(leverage.warning, color="black", ls="--", lw=1)
     for y in (-3, 3):

@@ -17,8 +17,8 @@ from qsar.model.members import START_NEUTRAL, Members, Settings, fit_member
 from qsar.model.training_set import TrainingSet, latent_targets, training_set
 from qsar.structures import read_acid
 from qsar.table import Measurement
-from qsar.validation.forest import count_fingerprints, fit_forest
 from qsar.validation.cache import Cache
+from qsar.validation.forest import count_fingerprints, fit_forest
 from qsar.validation.lines import line_predictions
 
 Floats = NDArray[np.float64]

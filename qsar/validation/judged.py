@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from qsar.groups import CATIONIC, perceive
+from qsar.model.library import Library
 from qsar.model.model import Model
 from qsar.structures import Acid, read_acid
 from qsar.validation.forest import count_fingerprints, fit_forest
@@ -96,7 +97,8 @@ class Judged:
     def width(self, level: float) -> Floats:
         """Widths of the intervals."""
         k = LEVELS.index(level)
-        return self.high[k] - self.low[k]
+        result: Floats = self.high[k] - self.low[k]
+        return result
 
 
 def family_of(acid: Acid, step: int) -> str:
@@ -110,9 +112,7 @@ def family_of(acid: Acid, step: int) -> str:
     return HIGHER
 
 
-def judge(
-    model: Model, steps: Sequence[MeasuredStep], done: Callable[[int], object] = lambda _: None
-) -> Judged:
+def judge(model: Model, steps: Sequence[MeasuredStep], done: Callable[[int], object] = lambda _: None) -> Judged:
     """Predict measured steps without their acids.
 
     Parameters
@@ -175,3 +175,18 @@ def _forest(judge: Judge, acids: Sequence[Acid], step: NDArray[np.int64]) -> Flo
         kept, rows = member != fold, folds == fold
         result[rows] = fit_forest(x[kept], library.pka[kept]).predict(query[rows])
     return result
+
+
+@dataclass(frozen=True)
+class LibraryStep:
+    """A measured step of the training table."""
+
+    smiles: str
+    step: int
+    pka: float
+
+
+def library_steps(library: Library) -> list[LibraryStep]:
+    """The training table of a model as steps to be judged, in its order."""
+    rows = zip(library.smiles, library.step, library.pka, strict=True)
+    return [LibraryStep(smiles, int(step), float(pka)) for smiles, step, pka in rows]

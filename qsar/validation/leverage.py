@@ -51,5 +51,3 @@ def leverage(x: Floats) -> Leverage:
 def leverage_of(model: Model, data: TrainingSet) -> Leverage:
     """Leverages of the dominant edges of the measured steps."""
     return leverage(data.x[data.dominant_edges(model.micro(data.x).mean(axis=0))])
-
-

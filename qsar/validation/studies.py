@@ -203,9 +203,7 @@ def randomisation(data: TrainingSet, scale: Scale, results: Results) -> tuple[Pe
         errors = Errors.of(values[test], results[name][test])
         return Permuted(float(np.corrcoef(values, data.pka)[0, 1]), errors.r2, errors.n)
 
-    dealt = [
-        outcome(permuted(data.pka, 400 + k), f"random/{k}/trend") for k in range(scale.permutations)
-    ]
+    dealt = [outcome(permuted(data.pka, 400 + k), f"random/{k}/trend") for k in range(scale.permutations)]
     return outcome(data.pka, "random/measured/trend"), dealt
 
 

@@ -10,8 +10,9 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Sequence
-from dataclasses import replace
+from dataclasses import fields, replace
 from functools import cached_property
+from typing import Any, TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,7 +21,8 @@ from rdkit import Chem
 from qsar.descriptors import Molecule, SiteView
 from qsar.errors import UserError
 from qsar.ionisation import cube, edge_descriptors
-from qsar.model.domain import Domain, features_seen
+from qsar.model.domain import features_seen
+from qsar.model.intervals import Calibration
 from qsar.model.library import Library
 from qsar.model.model import Model, Prediction
 from qsar.model.neighbours import Neighbours
@@ -87,9 +89,7 @@ class Judge:
             found.setdefault(int(member[rows[0]]), []).append(shown)
         return found
 
-    def predict(
-        self, acids: Sequence[Acid], coverage: float = 0.9
-    ) -> tuple[list[Prediction], NDArray[np.bool_]]:
+    def predict(self, acids: Sequence[Acid], coverage: float = 0.9) -> tuple[list[Prediction], NDArray[np.bool_]]:
         """Predict acids, each by the part of the model that never saw it.
 
         Parameters
@@ -119,9 +119,7 @@ def constitution(acid: Acid) -> str:
     return str(Chem.MolToSmiles(acid.mol, isomericSmiles=False))
 
 
-def without_fold(
-    model: Model, fold: int, features: dict[int, list[set[tuple[str, ...]]]] | None = None
-) -> Model:
+def without_fold(model: Model, fold: int, features: dict[int, list[set[tuple[str, ...]]]] | None = None) -> Model:
     """The part of a model that no acid of one fold has entered.
 
     Parameters
@@ -146,38 +144,29 @@ def without_fold(
     counts = Counter(model.domain.counts)
     for shown in (features or {}).get(fold, []):
         counts.subtract(shown)
+    scores = _rows_kept(calibration, kept)
     return replace(
         model,
         members=replace(members, dual=members.dual[one], slopes=members.slopes[one], trees=trees),
         neighbours=Neighbours(model.neighbours.weights, model.neighbours.points[kept]),
-        calibration=replace(
-            calibration,
-            scores=calibration.scores[kept],
-            member=np.zeros(int(kept.sum()), dtype=calibration.member.dtype),
-            label=calibration.label[kept],
-        ),
-        domain=Domain(
-            {k: n for k, n in counts.items() if n > 0}, model.domain.borderline_above, model.domain.outside_above
-        ),
+        calibration=replace(scores, member=np.zeros_like(scores.member)),
+        domain=replace(model.domain, counts={k: n for k, n in counts.items() if n > 0}),
         library=_rows_kept(library, kept),
     )
 
 
-def _rows_kept(library: Library, kept: NDArray[np.bool_]) -> Library:
-    def some(values: list[str]) -> list[str]:
-        return [v for v, k in zip(values, kept, strict=True) if k]
+_Rows = TypeVar("_Rows", Library, Calibration)
 
-    return Library(
-        some(library.smiles),
-        some(library.name),
-        some(library.family),
-        some(library.source),
-        library.step[kept],
-        library.pka[kept],
-        library.uncertainty[kept],
-        library.pka_without[kept],
-        library.expected_error[kept],
-    )
+
+def _rows_kept(table: _Rows, kept: NDArray[np.bool_]) -> _Rows:
+    """The same with some measured steps only: every field that has one value a step is cut."""
+    values = {f.name: getattr(table, f.name) for f in fields(table)}
+    cut: dict[str, Any] = {
+        name: v[kept] if isinstance(v, np.ndarray) else [x for x, k in zip(v, kept, strict=True) if k]
+        for name, v in values.items()
+        if len(v) == len(kept)
+    }
+    return replace(table, **cut)
 
 
 def _shown(model: Model, acid: Acid, steps: Sequence[int]) -> set[tuple[str, ...]]:

@@ -149,6 +149,14 @@ def test_an_amino_acid_with_a_missing_step_is_left_out() -> None:
     assert all("cannot be counted" in reason for reason in found)
 
 
+def test_a_weak_second_amine_is_not_taken_for_a_carboxyl_group() -> None:
+    """Piperazine-1,4-diacetic acid: one ring nitrogen is protonated near pH 5 only (as in piperazine itself)."""
+    smiles = "OC(=O)CN1CCN(CC(=O)O)CC1"
+    labels = {"pKa1": "2.2", "pKa2": "4.4", "pKa3": "8.7"}
+    found = reasons(*(open_row(smiles, value, label) for label, value in labels.items()))
+    assert all("cannot be counted" in reason for reason in found)
+
+
 def test_laboratories_that_count_differently_are_not_mixed() -> None:
     glycine = "NCC(=O)O"
     step = only(

@@ -39,8 +39,14 @@ LEAST_ACIDS = {
 
 FURTHER_FAMILIES = {"half_ester"}
 
-#: Families that hold fewer acids than wanted, with the number that they hold and why.
-SHORT: dict[str, tuple[int, str]] = {}
+#: Families that hold fewer acids than wanted, with the least number that they hold and why.
+SHORT = {
+    "alkanoic": (23, "others are remembered at 18 °C, in mixed solvents or without a sure source"),
+    "halogenoalkanoic": (36, "others are remembered at 18 or 35 °C or without a sure source"),
+    "keto_aldehydo": (11, "the simple ones are remembered at 18 °C; others hydrate, enolise or decompose"),
+    "benzoic_meta_para": (44, "others are remembered in 50 % ethanol only or without a sure source"),
+    "benzoic_ortho": (34, "others are remembered in 50 % ethanol only; some acids are lactols"),
+}
 
 
 def test_every_row_has_every_column(cells: list[dict[str, str]]) -> None:
@@ -87,9 +93,7 @@ def test_one_acid_has_one_name_and_one_family(cells: list[dict[str, str]]) -> No
     assert {k: v for k, v in by_name.items() if len(v) > 1} == {}
 
 
-def test_every_source_is_described_and_used(
-    cells: list[dict[str, str]], sources: dict[str, dict[str, str]]
-) -> None:
+def test_every_source_is_described_and_used(cells: list[dict[str, str]], sources: dict[str, dict[str, str]]) -> None:
     cited = {row["source"] for row in cells}
     named = {key for row in cells for key in re.findall(r"\((\w+)\)", row["checked"])}
     assert cited <= sources.keys()
@@ -128,15 +132,13 @@ def test_size_and_share_of_checked_rows(rows: list[TableRow]) -> None:
 
 def test_families_hold_the_acids_that_were_wanted(rows: list[TableRow]) -> None:
     acids = Counter(family for _, family in {(row.smiles, row.family) for row in rows})
-    short = {name: acids[name] for name, least in LEAST_ACIDS.items() if acids[name] < least}
-    assert short == {name: count for name, (count, _) in SHORT.items()}
-    assert all(reason for _, reason in SHORT.values())
+    wanted = {name: SHORT[name][0] if name in SHORT else least for name, least in LEAST_ACIDS.items()}
+    short = {name: acids[name] for name, least in wanted.items() if acids[name] < least}
+    assert short == {}
 
 
 @pytest.mark.parametrize("family", ["aminobenzoic_pyridine"])
-def test_the_proton_is_named_where_a_ring_nitrogen_could_hold_it(
-    family: str, cells: list[dict[str, str]]
-) -> None:
+def test_the_proton_is_named_where_a_ring_nitrogen_could_hold_it(family: str, cells: list[dict[str, str]]) -> None:
     unnamed = [
         row["name"]
         for row in cells

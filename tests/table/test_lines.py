@@ -60,8 +60,8 @@ def test_unhindered_acids_follow_taft(taft: Line) -> None:
 def test_steps_of_straight_chain_diacids_draw_near_the_statistical_limit(rows: list[TableRow]) -> None:
     """Two equal groups far apart differ by log10 4 (Adams, J. Am. Chem. Soc. 1916, 38, 1503; Bjerrum 1923).
 
-    Sebacic acid (C10) breaks the steady fall: its two handbook steps lie 1.00 apart, and handbooks disagree on
-    both by more than 0.1; the fall holds within the uncertainties that the table states.
+    Sebacic acid (C10) breaks the steady fall: its two handbook steps lie 1.00 apart, and handbooks disagree
+    on both by more than 0.1; the fall holds within the uncertainties that the table states.
     """
     gaps = chain_gaps(rows)
     assert set(range(2, 11)) <= gaps.keys()

@@ -1,0 +1,410 @@
+"""Analogues of an acid: one substituent, or one hydrogen, exchanged for another group.
+
+A place is chosen once (`positions`), a group is put there (`swap`), or every group of a list is (`analogues`).
+What is next to the place keeps its configuration.
+"""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cache
+from typing import TYPE_CHECKING
+
+from rdkit import Chem
+
+from qsar.structures import ELEMENTS, Acid, StructureError, acid_from_mol
+
+if TYPE_CHECKING:
+    from qsar.model.model import Model, Prediction, StepPrediction
+    from qsar.substituents import Decomposition
+
+MOST_GROUP_ATOMS = 30
+
+
+@dataclass(frozen=True, slots=True)
+class Group:
+    """A group that can be put in place of another.
+
+    Attributes
+    ----------
+    name : str
+        Condensed formula or name.
+    smiles : str
+        SMILES with ``[*]`` where it is attached by a single bond.
+    """
+
+    name: str
+    smiles: str
+
+
+@dataclass(frozen=True, slots=True)
+class Position:
+    """A place of an acid that carries hydrogen or a substituent.
+
+    Attributes
+    ----------
+    key : str
+        Short name that is stable for an acid: ``h5`` for a hydrogen on atom 5, ``g5-7`` for the group that begins
+        with atom 7 and hangs on atom 5; atom numbers are those of ``Acid.mol``.
+    place : str
+        Where it is, in words: "α", "para", "on methoxy".
+    group : str
+        What is there now: name, condensed formula or SMILES.
+    anchor : int
+        Atom that stays.
+    root : int or None
+        First atom of the group that goes; None for a hydrogen.
+    atoms : tuple of int
+        All heavy atoms that go; empty for a hydrogen.
+    """
+
+    key: str
+    place: str
+    group: str
+    anchor: int
+    root: int | None
+    atoms: tuple[int, ...]
+
+    @property
+    def label(self) -> str:
+        """Place and what is there now, for lists."""
+        return f"{self.place}: {self.group}" if self.place else self.group
+
+
+@dataclass(frozen=True, slots=True)
+class Analogue:
+    """One acid of a series.
+
+    Attributes
+    ----------
+    group : Group
+    smiles : str
+        Canonical SMILES; empty where the exchange gives no acid.
+    prediction : Prediction
+        All steps, or the reason why there are none.
+    step : StepPrediction or None
+        The step that was asked for.
+    change : float or None
+        pKa of that step less that of the acid that was started from.
+    """
+
+    group: Group
+    smiles: str
+    prediction: Prediction
+    step: StepPrediction | None
+    change: float | None
+
+
+@cache
+def known_groups() -> tuple[Group, ...]:
+    """The groups with tabulated constants, hydrogen first; those that bring a second acid proton are among them."""
+    from qsar.constants import substituents
+
+    return tuple(Group(s.group, s.smiles) for s in substituents() if _is_predictable(s.smiles))
+
+
+def _is_predictable(smiles: str) -> bool:
+    """Whether a tabulated group has one attachment and none but elements that acids are predicted with."""
+    if _attachments(smiles) != 1:
+        return False
+    return all(a.GetAtomicNum() in ELEMENTS or a.GetAtomicNum() == 0 for a in Chem.MolFromSmiles(smiles).GetAtoms())
+
+
+def group_named(text: str) -> Group:
+    """A group by its name in the table, or by a SMILES with ``*``.
+
+    Raises
+    ------
+    StructureError
+        If it is neither.
+    """
+    wanted = text.strip()
+    for group in known_groups():
+        if wanted in (group.name, group.smiles):
+            return group
+    if "*" not in wanted:
+        raise StructureError(f"{wanted[:40]!r} is no group of the list; give its SMILES with * where it is attached")
+    read_group(wanted)
+    return Group(wanted, wanted)
+
+
+def read_group(smiles: str) -> Chem.Mol:
+    """Molecule of a group, its attachment as a dummy atom.
+
+    Raises
+    ------
+    StructureError
+        If it cannot be read, or is not attached by exactly one single bond.
+    """
+    short = smiles[:40]
+    if _attachments(smiles) != 1:
+        raise StructureError(f"group {short!r}: a SMILES with one * on a single bond is expected, such as *C#N")
+    mol = Chem.MolFromSmiles(smiles)
+    if mol.GetNumHeavyAtoms() > MOST_GROUP_ATOMS + 1:
+        raise StructureError(f"group {short!r} has more than {MOST_GROUP_ATOMS} atoms")
+    return mol
+
+
+def _attachments(smiles: str) -> int:
+    """Number of attachment points on single bonds; 0 for what is not a group."""
+    mol = Chem.MolFromSmiles(smiles) if 0 < len(smiles) <= 500 else None
+    if mol is None or len(Chem.GetMolFrags(mol)) != 1:
+        return 0
+    stars = [a for a in mol.GetAtoms() if a.GetAtomicNum() == 0]
+    single = [
+        a for a in stars if a.GetDegree() == 1 and a.GetBonds()[0].GetBondType() == Chem.BondType.SINGLE
+    ]
+    return len(single) if len(single) == len(stars) else 0
+
+
+def positions(acid: Acid) -> tuple[Position, ...]:
+    """Every place of an acid whose hydrogen or substituent can be exchanged.
+
+    The first carboxyl group stays; another one can be exchanged as a whole, but not the proton in it.
+
+    Parameters
+    ----------
+    acid : Acid
+
+    Returns
+    -------
+    tuple of Position
+        Nearest to the carboxyl group first.
+    """
+    from qsar.substituents import decompose
+
+    parts = decompose(acid, acid.sites[0])
+    site, graph = acid.sites[0], acid.graph
+    distance = graph.distances(site, frozenset())
+    fixed = _carboxyl_atoms(acid)
+    found: list[tuple[tuple[int, int, int], Position]] = []
+    for atom in acid.mol.GetAtoms():
+        a = atom.GetIdx()
+        bears_hydrogen = atom.GetTotalNumHs() > 0 and (a not in fixed or a == site)  # formic acid's own
+        if bears_hydrogen:
+            place = _place(acid, parts, a)
+            found.append(((distance[a] + 1, 1, a), Position(f"h{a}", place, "H", a, None, ())))
+        for bond in atom.GetBonds():
+            b = bond.GetOtherAtomIdx(a)
+            if distance[b] <= distance[a] or bond.IsInRing() or bond.GetBondType() != Chem.BondType.SINGLE:
+                continue
+            if b in fixed and b not in acid.sites:
+                continue  # the OH of a carboxyl group
+            atoms = _beyond(acid.mol, a, b)
+            known = next((s for s in parts.substituents if s.atoms[0] == b and set(s.atoms) == set(atoms)), None)
+            name = known.name if known is not None else _name(acid.mol, a, b, atoms)
+            place = known.place if known is not None else _place(acid, parts, a)
+            found.append(((distance[b], 0, b), Position(f"g{a}-{b}", place, name, a, b, atoms)))
+    return tuple(p for _, p in sorted(found, key=lambda item: item[0]))
+
+
+def find_position(acid: Acid, wanted: str) -> Position:
+    """A position by its key, its number in `positions` (from 1), its place, or its label.
+
+    Raises
+    ------
+    StructureError
+        If there is none, or more than one of different kinds.
+    """
+    places = positions(acid)
+    text = wanted.strip()
+    if text.isascii() and text.isdigit() and 1 <= int(text) <= len(places):
+        return places[int(text) - 1]
+    for tried in ("key", "label", "place"):
+        hits = [p for p in places if getattr(p, tried) == text]
+        if hits and (len(hits) == 1 or len(set(_equivalent(acid, hits))) == 1):
+            return hits[0]
+        if hits:
+            listed = ", ".join(f"{p.key} ({p.label})" for p in hits[:6])
+            raise StructureError(f"position {text!r} fits {len(hits)} places: {listed}; name one by its key")
+    listed = ", ".join(dict.fromkeys(p.label for p in places[:12]))
+    raise StructureError(f"no position {text[:40]!r} in {acid.smiles}; there are {listed}")
+
+
+def _equivalent(acid: Acid, places: Sequence[Position]) -> list[tuple[int, int]]:
+    rank = list(Chem.CanonicalRankAtoms(acid.mol, breakTies=False))
+    return [(rank[p.anchor], -1 if p.root is None else rank[p.root]) for p in places]
+
+
+def _carboxyl_atoms(acid: Acid) -> frozenset[int]:
+    atoms = set(acid.sites)
+    for site in acid.sites:
+        atoms |= {n.GetIdx() for n in acid.mol.GetAtomWithIdx(site).GetNeighbors() if n.GetAtomicNum() == 8}
+    return frozenset(atoms)
+
+
+def _beyond(mol: Chem.Mol, a: int, b: int) -> tuple[int, ...]:
+    """Atoms on the far side of a bond that is in no ring."""
+    seen, queue = {a, b}, [b]
+    for atom in queue:
+        for other in mol.GetAtomWithIdx(atom).GetNeighbors():
+            if other.GetIdx() not in seen:
+                seen.add(other.GetIdx())
+                queue.append(other.GetIdx())
+    return tuple(sorted(seen - {a}))
+
+
+def _name(mol: Chem.Mol, a: int, b: int, atoms: tuple[int, ...]) -> str:
+    """Condensed formula of a group where it is tabulated, else its SMILES."""
+    from qsar.constants import substituent_by_smiles
+
+    smiles = Chem.MolFragmentToSmiles(mol, (a, *atoms), atomSymbols=_symbols(mol, a), rootedAtAtom=a)
+    smiles = re.sub(r"^\[?\*\]?", "[*]", smiles, count=1)
+    group = Chem.MolFromSmiles(smiles)
+    if group is None:
+        return smiles
+    known = substituent_by_smiles(Chem.MolToSmiles(group))
+    return known.group if known is not None else smiles
+
+
+def _symbols(mol: Chem.Mol, star: int) -> list[str]:
+    return ["*" if atom.GetIdx() == star else atom.GetSmarts() for atom in mol.GetAtoms()]
+
+
+def _place(acid: Acid, parts: Decomposition, atom: int) -> str:
+    """Place of whatever hangs on an atom, in words."""
+    from qsar.substituent_names import place_of
+
+    owner = next((s for s in parts.substituents if atom in s.atoms), None)
+    if atom == parts.site:
+        return "on the carboxyl carbon"
+    if owner is not None:
+        return f"on {owner.label}"
+    path = Chem.GetShortestPath(acid.mol, parts.site, atom)
+    return place_of(acid.graph, parts.rule, parts.parent, (*path, -1), "")
+
+
+def swap(acid: Acid, position: Position, group: Group) -> Acid:
+    """The acid with another group at a place.
+
+    Parameters
+    ----------
+    acid : Acid
+    position : Position
+        One of its `positions`.
+    group : Group
+
+    Returns
+    -------
+    Acid
+
+    Raises
+    ------
+    StructureError
+        If the group cannot be read, or what comes out is no acid that is predicted.
+    """
+    new = read_group(group.smiles)
+    star = next(a for a in new.GetAtoms() if a.GetAtomicNum() == 0)
+    first = star.GetNeighbors()[0].GetIdx()
+    mol = Chem.RWMol(acid.mol)
+    root = position.root
+    if root is None:
+        before = mol.GetNumAtoms()
+        mol = Chem.RWMol(Chem.AddHs(mol, onlyOnAtoms=[position.anchor]))
+        root = before  # the first hydrogen that was added
+    # The first atom of the new group takes the very place of the old one: the order of the bonds around the
+    # anchor, and with it the configuration there, stays.
+    for bond in list(mol.GetAtomWithIdx(root).GetBonds()):
+        if bond.GetOtherAtomIdx(root) != position.anchor:
+            mol.RemoveBond(bond.GetBeginAtomIdx(), bond.GetEndAtomIdx())
+    mol.ReplaceAtom(root, _fresh(new.GetAtomWithIdx(first)))
+    index = {first: root}
+    for atom in new.GetAtoms():
+        if atom.GetIdx() not in (first, star.GetIdx()):
+            index[atom.GetIdx()] = mol.AddAtom(atom)
+    for bond in new.GetBonds():
+        ends = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()
+        if star.GetIdx() not in ends:
+            mol.AddBond(index[ends[0]], index[ends[1]], bond.GetBondType())
+            copy = mol.GetBondBetweenAtoms(index[ends[0]], index[ends[1]])
+            copy.SetIsAromatic(bond.GetIsAromatic())
+    for a in sorted((a for a in position.atoms if a != position.root), reverse=True):
+        mol.RemoveAtom(a)
+    return acid_from_mol(_without_hydrogens(mol.GetMol()))
+
+
+def _without_hydrogens(mol: Chem.Mol) -> Chem.Mol:
+    """Fold drawn hydrogens back, also one that no longer tells cis from trans."""
+    options = Chem.RemoveHsParameters()
+    options.removeDefiningBondStereo = True
+    try:
+        Chem.SanitizeMol(mol)
+        return Chem.RemoveHs(mol, options)
+    except (Chem.MolSanitizeException, ValueError, RuntimeError) as problem:
+        raise StructureError("this group cannot be attached there: a valence is exceeded") from problem
+
+
+def _fresh(atom: Chem.Atom) -> Chem.Atom:
+    copy = Chem.Atom(atom.GetAtomicNum())
+    copy.SetFormalCharge(atom.GetFormalCharge())
+    copy.SetIsAromatic(atom.GetIsAromatic())
+    copy.SetNumExplicitHs(atom.GetNumExplicitHs())
+    copy.SetNoImplicit(atom.GetNoImplicit())
+    return copy
+
+
+def analogues(
+    model: Model,
+    acid: Acid,
+    position: Position,
+    groups: Sequence[Group] | None = None,
+    *,
+    step: int = 1,
+    low: float | None = None,
+    high: float | None = None,
+    coverage: float = 0.9,
+) -> list[Analogue]:
+    """Every group of a list at one place of an acid, each with its prediction.
+
+    Parameters
+    ----------
+    model : Model
+    acid : Acid
+    position : Position
+        Where the groups go.
+    groups : sequence of Group, optional
+        By default `known_groups`.
+    step : int
+        The step that sorts and filters, from 1.
+    low, high : float, optional
+        Only analogues whose interval meets this range of pKa.
+    coverage : float
+        Of the intervals.
+
+    Returns
+    -------
+    list of Analogue
+        By rising pKa; those that could not be used last. With a range of pKa these are left out.
+
+    Raises
+    ------
+    UserError
+        If `coverage` is out of range.
+    """
+    chosen = known_groups() if groups is None else groups
+    asked: list[Acid | StructureError] = [acid]
+    for group in chosen:
+        try:
+            asked.append(swap(acid, position, group))
+        except StructureError as reason:
+            asked.append(reason)
+    start, *others = model.predict(asked, coverage=coverage)
+    origin = _step(start, step)
+    found = []
+    for group, prediction in zip(chosen, others, strict=True):
+        own = _step(prediction, step)
+        change = None if own is None or origin is None else own.pka - origin.pka
+        found.append(Analogue(group, prediction.structure, prediction, own, change))
+    if low is not None or high is not None:
+        found = [a for a in found if a.step is not None and _meets(a.step, low, high)]
+    return sorted(found, key=lambda a: float("inf") if a.step is None else a.step.pka)
+
+
+def _meets(step: StepPrediction, low: float | None, high: float | None) -> bool:
+    return (low is None or step.high >= low) and (high is None or step.low <= high)
+
+
+def _step(prediction: Prediction, step: int) -> StepPrediction | None:
+    return next((s for s in prediction.steps if s.step == step), None)
