@@ -130,6 +130,30 @@ def group_named(text: str) -> Group:
     return Group(wanted, wanted)
 
 
+def group_words(group: Group) -> str:
+    """Name of a group in words, for searching: "nitro", "methyl phenyl"."""
+    from qsar.structures import read_acid
+    from qsar.substituents import decompose
+
+    benzoic = read_acid("O=C(O)c1ccccc1")
+    place = next(p for p in positions(benzoic) if p.place == "para")
+    try:
+        made = swap(benzoic, place, group)
+    except StructureError:
+        return ""
+    parts = decompose(made, made.sites[-1] if len(made.sites) == 1 else _aromatic_site(made))
+    return " ".join(s.name for s in parts.substituents)
+
+
+def _aromatic_site(acid: Acid) -> int:
+    """Carboxyl carbon on the ring, where the group brings another one."""
+    return next(
+        s
+        for s in acid.sites
+        if any(n.GetIsAromatic() for n in acid.mol.GetAtomWithIdx(s).GetNeighbors())
+    )
+
+
 def read_group(smiles: str) -> Chem.Mol:
     """Molecule of a group, its attachment as a dummy atom.
 

@@ -240,7 +240,7 @@ class AcidityRegressor(RegressorMixin, _TakesStructures):  # type: ignore[misc]
         Raises
         ------
         ValueError
-            If a structure cannot be used, or there are fewer acids than folds.
+            If a structure cannot be used, or there are fewer than two acids a fold.
         """
         from qsar.model.training import train
 
@@ -252,10 +252,10 @@ class AcidityRegressor(RegressorMixin, _TakesStructures):  # type: ignore[misc]
             rows = [r for r, w in zip(rows, weights, strict=True) if w > 0]
             weights = [w for w in weights if w > 0]
         distinct = len({r.acid.smiles for r in rows})
-        if distinct < max(self.folds, 2):
+        if distinct < 2 * self.folds:
             raise ValueError(
-                f"X holds {distinct} different acids (n_samples = {len(acids)}, 1 sample is too few); at least as many "
-                f"as folds ({self.folds}) are needed"
+                f"X holds {distinct} different acids (n_samples = {len(acids)}, 1 sample is too few); at least two a "
+                f"fold ({2 * self.folds}) are needed"
             )
         settings = self._settings()
         self.model_ = train(rows, "estimator", settings, weights=weights)

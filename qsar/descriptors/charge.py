@@ -16,7 +16,8 @@ _COLUMNS = columns(
     "carboxyls carboxyl_g40 carboxyl_g70 carboxyl_nearest carboxyl_path_bulk carboxyl_path_quaternary "
     "carboxyl_path_unsaturated carboxyl_cis carboxyl_geminal net_charge "
     "cation_in_ring cation_pairs anion_path_bulk anion_path_quaternary geminal_bulk geminal_bulk_anion "
-    "geminal_small_ring geminal_small_ring_anion anion_cis vicinal_splay vicinal_splay_anion"
+    "geminal_small_ring geminal_small_ring_anion anion_cis vicinal_splay vicinal_splay_anion "
+    "cis_small_ring cis_small_ring_anion cation_substituents cation_delocalised vicinal_crowd vicinal_crowd_anion"
 )
 
 
@@ -62,7 +63,44 @@ def _compute(view: SiteView) -> list[float]:
         float(sum(view.alpha_system is t for t in cations)),
         float(len(cations) * (len(cations) - 1)),
         *_between(view, neutral, carboxylates),
+        sum(_cis(view, t) for t in neutral) * _smallness(view),
+        sum(_cis(view, t) for t in carboxylates) * _smallness(view),
+        sum(0.5 ** max(t.bonds - 1, 0) * (_carbons(view, t) - 1) for t in cations if t.kind in _AMMONIUM),
+        sum(0.5 ** max(t.bonds - 1, 0) for t in cations if t.kind not in _AMMONIUM),
+        sum(_vicinal_crowd(view, t) for t in neutral),
+        sum(_vicinal_crowd(view, t) for t in carboxylates),
     ]
+
+
+_AMMONIUM = ("ammonium", "quaternary_n")
+_SMALL = {3: 1.0, 4: 0.5}
+
+
+def _smallness(view: SiteView) -> float:
+    """1 where the carboxyl group is on a three-membered ring, 1/2 on a four-membered one."""
+    return _SMALL.get(view.graph.ring_size[view.alpha], 0.0) if view.alpha >= 0 else 0.0
+
+
+def _carbons(view: SiteView, term: Term) -> int:
+    """Carbons on the nitrogen of an ammonium group."""
+    return sum(view.graph.numbers[b] == 6 for b in view.graph.neighbours[term.anchor])
+
+
+def _vicinal_crowd(view: SiteView, term: Term) -> float:
+    """Bulk on both carbons of a succinic acid: the product of what is on either, which turns the groups gauche."""
+    graph, alpha = view.graph, view.alpha
+    if term.bonds != 2 or alpha < 0 or view.molecule.unsaturated[alpha]:
+        return 0.0
+    other = next((b for b in graph.neighbours[term.anchor] if b in graph.neighbours[alpha]), -1)
+    if other < 0 or view.molecule.unsaturated[other]:
+        return 0.0
+    skip = view.molecule.set_apart | {alpha, other, view.site, term.anchor}
+
+    def bulk(a: int) -> float:
+        side = [b for b in graph.neighbours[a] if b not in skip and graph.numbers[b] == 6]
+        return sum(1.0 + 0.5 * sum(c not in skip and c != a for c in graph.neighbours[b]) for b in side)
+
+    return bulk(alpha) * bulk(other)
 
 
 def _between(view: SiteView, neutral: list[Term], ionised: list[Term]) -> list[float]:
@@ -101,10 +139,16 @@ def _geminal_crowd(view: SiteView) -> tuple[float, float]:
     """Branching of the alkyl groups on the alpha carbon, and 1 or 1/2 for it in a three- or four-membered ring."""
     if view.alpha < 0 or view.molecule.unsaturated[view.alpha]:
         return 0.0, 0.0
-    groups = [b for b in view.carbons_on(view.alpha) if view.term_of.get(b) is None]
+    carboxyl = ("carboxyl", "carboxylate")
+    terms = view.term_of
+    groups = [
+        b
+        for b in view.carbons_on(view.alpha)
+        if view.graph.numbers[b] == 6 and (b not in terms or terms[b].kind not in carboxyl)
+    ]
     size = view.graph.ring_size[view.alpha]
     crowd = float(len(groups) == 2) + 0.5 * sum(len(view.carbons_on(b)) for b in groups if not size)
-    return crowd, {3: 1.0, 4: 0.5}.get(size, 0.0)
+    return crowd, _SMALL.get(size, 0.0)
 
 
 def _splay(view: SiteView, term: Term) -> float:

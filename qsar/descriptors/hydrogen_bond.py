@@ -8,10 +8,12 @@ Source of the idea: Dippy, Chem. Rev. 1939, 25, 151 (salicylic and maleic acids)
 from __future__ import annotations
 
 from qsar.descriptors.effect import Effect, columns
+from qsar.descriptors.resonance import ring_substituents
 from qsar.descriptors.view import SiteView, Term
 
 _COLUMNS = columns(
-    "oh_ring5 oh_ring6 oh_ring7 oh_ring6_rigid oh_ring7_rigid oh_ortho_pair nh_ring5 nh_ring6 nh_ring7 nh_ring6_rigid "
+    "oh_ring5 oh_ring6 oh_ring7 oh_ring6_rigid oh_ring7_rigid oh_ortho_pair oh_ortho_buttressed "
+    "nh_ring5 nh_ring6 nh_ring7 nh_ring6_rigid "
     "cooh_ring6 cooh_ring7 cooh_ring7_rigid hindered_monoanion"
 )
 _CARBOXYL = ("carboxyl",)
@@ -58,6 +60,11 @@ def _compute(view: SiteView) -> list[float]:
                 out[f"{element}_ring{size}_rigid"] += 1.0
                 ortho_oh += element == "oh" and size == 6
     out["oh_ortho_pair"] = float(ortho_oh >= 2)
+    system = view.alpha_system
+    if ortho_oh and system is not None:
+        # a second ortho group pushes the COOH towards the OH
+        ortho = sum(position == 1 and a != view.site for position, _, a in ring_substituents(view, system, view.alpha))
+        out["oh_ortho_buttressed"] = float(ortho >= 2)
     # The proton of a hydrogen-bonded monoanion is hard to take: a carboxylate held near the site whose proton leaves.
     for term in view.terms:
         if term.kind == "carboxylate" and term.bonds in (1, 2):

@@ -14,7 +14,8 @@ from qsar.descriptors.view import SiteView
 
 _COLUMNS = columns(
     "ortho_count ortho_bulk ortho_largest ortho_both ortho_alkyl ortho_halogen ortho_fused ortho_ether ortho_nitro "
-    "ortho_carbonyl ortho_ring_carbonyl alpha_bulk beta_bulk atoms_at_three atoms_at_four atoms_at_five"
+    "ortho_carbonyl ortho_ring_carbonyl ortho_pair_sigma "
+    "alpha_bulk beta_bulk atoms_at_three atoms_at_four atoms_at_five"
 )
 _HALOGEN = ("fluoro", "chloro", "bromo", "iodo")
 _CARBONYL = (
@@ -38,14 +39,16 @@ def alkyl_bulk(view: SiteView, atom: int) -> float:
 def _ortho(view: SiteView) -> list[float]:
     system = view.alpha_system
     if system is None:
-        return [0.0] * 11
+        return [0.0] * 12
     bulks = []
+    sigmas = []
     alkyl = halogen = ether = nitro = carbonyl = ring_carbonyl = 0.0
     for position, c, atom in ring_substituents(view, system, view.alpha):
         if position != 1 or atom == view.site:
             continue
         plain = c.kind == "alkyl"
         bulks.append(alkyl_bulk(view, atom) if plain else c.bulk)
+        sigmas.append(c.sigma_i)
         alkyl += float(plain)
         halogen += float(c.kind in _HALOGEN)
         ether += float(c.kind in ("alkoxy", "aryloxy", "acyloxy", "alkylthio", "arylthio"))
@@ -70,6 +73,8 @@ def _ortho(view: SiteView) -> list[float]:
         nitro,
         carbonyl,
         ring_carbonyl,
+        # two groups together turn the COOH out of the ring's plane, and their field effects then count in full
+        sum(sigmas) * float(len(sigmas) >= 2),
     ]
 
 

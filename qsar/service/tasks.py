@@ -41,6 +41,7 @@ class Desk:
     """What a worker process keeps from task to task."""
 
     model: Model
+    folder: Path | None = None
     names: dict[str, str] = field(default_factory=dict)
 
 
@@ -55,7 +56,7 @@ def open_desk(folder: Path | None) -> Desk:
         if name and smiles:
             names.setdefault(name.casefold(), smiles)
     _explained(Desk(model), "CC(=O)O", 0.9)  # what is computed once is computed now
-    return Desk(model, names)
+    return Desk(model, folder, names)
 
 
 def usable(smiles: str) -> Acid:
@@ -144,10 +145,9 @@ def swap(desk: Desk, smiles: str, position: str, group: str, coverage: float, st
 
 def groups(desk: Desk) -> list[dict[str, str]]:
     """The groups that can be put in."""
-    from qsar.analogues import known_groups
-    from qsar.substituent_names import name_of_group
+    from qsar.analogues import group_words, known_groups
 
-    return [{"name": g.name, "smiles": g.smiles, "said": name_of_group(g.smiles)} for g in known_groups()]
+    return [{"name": g.name, "smiles": g.smiles, "words": group_words(g)} for g in known_groups()]
 
 
 def all_groups(
@@ -232,11 +232,11 @@ def report(desk: Desk, smiles: Sequence[tuple[str, str]], coverage: float) -> li
     ]
 
 
-def decide(desk: Desk, kind: str, **question: Any) -> dict[str, Any]:
+def decide(desk: Desk, kind: str, question: dict[str, Any]) -> dict[str, Any]:
     """Answer to a decision: base, window, buffer, risk."""
     from qsar.service.decide import DECISIONS
 
-    return DECISIONS[kind](desk.model, **question)
+    return DECISIONS[kind](desk.folder, question)
 
 
 TASKS: dict[str, Callable[..., Any]] = {

@@ -6,7 +6,7 @@ Attenuation by a constant factor a bond: Branch & Calvin 1941; sigma_I: Charton,
 
 from __future__ import annotations
 
-from math import sqrt
+from math import log, sqrt
 
 import pytest
 from descriptors.worked import check, describe, not_worked
@@ -36,7 +36,19 @@ CASES: list[tuple[str, dict[str, float]]] = [
             "withdrawing_within3": 0.47,
             "withdrawing_within4": 0.47,
             "withdrawing_chi_g40": (3.16 - 2.20) * 0.4,
+            "withdrawing_damped_root": sqrt(0.15 + 0.188) - sqrt(0.15),
+            "withdrawing_damped_log": log(1 + 0.188 / 0.15),
             "scaffold_sigma_g40": 0.0,
+        },
+    ),
+    # 2-chloro-2-methoxyacetic acid: the scaffold itself withdraws 0.27, which damps what Cl adds
+    (
+        "COC(Cl)C(=O)O",
+        {
+            "withdrawing_g40": 0.47,
+            "scaffold_sigma_g40": 0.27,
+            "withdrawing_damped_root": sqrt(0.15 + 0.27 + 0.47) - sqrt(0.15 + 0.27),
+            "withdrawing_damped_log": log(1 + 0.47 / (0.15 + 0.27)),
         },
     ),
     # chlorofluoroacetic acid: both on the alpha carbon, n = 1
