@@ -142,7 +142,7 @@ def group_words(group: Group) -> str:
     except StructureError:
         return ""
     parts = decompose(made, made.sites[-1] if len(made.sites) == 1 else _aromatic_site(made))
-    return " ".join(s.name for s in parts.substituents)
+    return " ".join(dict.fromkeys(s.name for s in parts.substituents))
 
 
 def _aromatic_site(acid: Acid) -> int:

@@ -283,7 +283,7 @@ class AcidityRegressor(RegressorMixin, _TakesStructures):  # type: ignore[misc]
 
         plain = Settings(folds=self.folds, seed=self.random_state)
 
-        def given(*names: str) -> dict[str, float]:
+        def given(*names: str) -> dict[str, Any]:
             return {name: getattr(self, name) for name in names if getattr(self, name) is not None}
 
         return replace(

@@ -51,7 +51,9 @@ def _rows(prediction: Prediction) -> str:
     if prediction.error is not None or prediction.acid is None:
         return f'<tr><td></td><td colspan="6">{escape(prediction.error or "not predicted")}</td></tr>'
     n = len(prediction.steps)
-    picture = f'<td rowspan="{n}" title="{escape(prediction.structure, quote=True)}">{drawing(prediction.acid.mol)}</td>'
+    picture = (
+        f'<td rowspan="{n}" title="{escape(prediction.structure, quote=True)}">{drawing(prediction.acid.mol)}</td>'
+    )
     return "".join(
         f"<tr>{picture if k == 0 else ''}{''.join(f'<td>{c}</td>' for c in _cells(s))}</tr>"
         for k, s in enumerate(prediction.steps)
@@ -78,7 +80,7 @@ def drawing(mol: Chem.Mol, size: tuple[int, int] = _SIZE) -> str:
     canvas = rdMolDraw2D.MolDraw2DSVG(*size)
     options = canvas.drawOptions()
     options.useBWAtomPalette()
-    options.clearBackground = False
+    options.clearBackground = False  # type: ignore[assignment]
     rdMolDraw2D.PrepareAndDrawMolecule(canvas, mol)
     canvas.FinishDrawing()
     svg = str(canvas.GetDrawingText())

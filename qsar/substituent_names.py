@@ -45,7 +45,8 @@ _NAMES = """
 *N1CCCC1=O 2-oxopyrrolidin-1-yl|*N1C(=O)CCC1=O succinimido|*N1C(=O)c2ccccc2C1=O phthalimido
 *[O-] oxido|*CC* ethylene|*CCC* trimethylene|*CCCC* tetramethylene|*CCCCC* pentamethylene|*OCO* methylenedioxy
 *C* methylene bridge|*O* epoxy bridge|*c1cccc(*)c1 phenylene|*C(=O)OC(*)=O oxydicarbonyl
-*Nc1ccccc1 anilino|*N(C)c1ccccc1 N-methylanilino|*c1ccc2c(c1)OCO2 1,3-benzodioxol-5-yl|*N1c2ccccc2Sc2ccccc21 phenothiazin-10-yl
+*Nc1ccccc1 anilino|*N(C)c1ccccc1 N-methylanilino|*c1ccc2c(c1)OCO2 1,3-benzodioxol-5-yl
+*N1c2ccccc2Sc2ccccc21 phenothiazin-10-yl
 """
 
 

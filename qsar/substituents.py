@@ -26,7 +26,6 @@ from qsar.graph import Graph
 from qsar.groups import CATIONIC, Group, perceive
 from qsar.structures import Acid
 
-
 _ACYL = ("amide", "ester", "urea", "carbamate")
 
 

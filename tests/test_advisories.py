@@ -7,7 +7,6 @@ to lactones, beta-keto acids lose CO2, long chains form micelles.
 from __future__ import annotations
 
 import pytest
-from rdkit import Chem
 
 from qsar.advisories import Advisory, advise, advisories
 from qsar.structures import read_acid
@@ -55,7 +54,16 @@ def test_known_acids(smiles: str, wanted: set[str]) -> None:
 
 @pytest.mark.parametrize(
     "smiles",
-    ["CC(=O)O", "OC(=O)c1ccccc1", "CC(O)C(=O)O", "OC(=O)CCC(=O)O", "C/C=C/C(=O)O", "OC(=O)CCl", "CC(C)C(=O)O", "OC(=O)c1ccco1"],
+    [
+        "CC(=O)O",
+        "OC(=O)c1ccccc1",
+        "CC(O)C(=O)O",
+        "OC(=O)CCC(=O)O",
+        "C/C=C/C(=O)O",
+        "OC(=O)CCl",
+        "CC(C)C(=O)O",
+        "OC(=O)c1ccco1",
+    ],
 )
 def test_plain_acids_need_no_advice(smiles: str) -> None:
     assert names(smiles) == set()

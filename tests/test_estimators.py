@@ -1,8 +1,8 @@
 """The estimators in scikit-learn's own checks, in pipelines and grid searches, and on the screen of a notebook.
 
 scikit-learn's ``check_estimator`` feeds numbers, which no structure is. It is run in two ways: on the estimators
-themselves, where it checks what does not need data, and on subclasses that take each row of numbers for one of a list of
-acids, where it checks fitting and predicting. What cannot apply is listed with its reason.
+themselves, where it checks what does not need data, and on subclasses that take each row of numbers for one of a list
+of acids, where it checks fitting and predicting. What cannot apply is listed with its reason.
 """
 
 from __future__ import annotations
@@ -38,7 +38,7 @@ QUICK: dict[str, Any] = {"folds": 3, "max_iter": 5}
 class FromNumbers:
     """Takes each row of numbers for an acid, the same one for the same numbers and another for others."""
 
-    pool = [read_acid(s) for s in dict.fromkeys(SMILES)]
+    pool: ClassVar[list[Any]] = [read_acid(s) for s in dict.fromkeys(SMILES)]
     known: ClassVar[dict[bytes, int]] = {}
 
     def _acids(self, structures: Any, *, reset: bool) -> list[Any]:
@@ -66,8 +66,10 @@ class NumberRegressor(FromNumbers, AcidityRegressor):
 
 #: Checks of scikit-learn that cannot apply, with the reason.
 NOT_APPLICABLE = {
-    "check_sample_weight_equivalence_on_dense_data": "copies of a row change the shares of the folds, weights do not",
-    "check_fit2d_1feature": "the subclass draws acids at random, sometimes fewer than folds",
+    "check_sample_weight_equivalence_on_dense_data": "copies of a row change the variance of its acid as weights do "
+    "not, and acids without weight are dealt out to no fold",
+    "check_sample_weights_shape": "trains on four different rows; an ensemble of folds needs more acids",
+    "check_sample_weights_not_overwritten": "trains on four different rows; an ensemble of folds needs more acids",
 }
 
 
@@ -78,12 +80,15 @@ def test_scikit_learn_accepts_the_estimator(estimator: Any) -> None:
     assert results and all(r["status"] in ("passed", "skipped") for r in results), results
 
 
+@pytest.mark.slow
 @pytest.mark.parametrize("estimator", [NumberDescriptors(), NumberRegressor(**QUICK)])
 @pytest.mark.filterwarnings("ignore")
 def test_scikit_learn_accepts_what_the_estimator_does(estimator: Any) -> None:
     results = check_estimator(estimator, expected_failed_checks=NOT_APPLICABLE, on_fail=None)
     failed = [(r["check_name"], repr(r["exception"])[-400:]) for r in results if r["status"] == "failed"]
     assert not failed, failed
+    expected = [r["check_name"] for r in results if r["status"] == "xfail"]
+    assert isinstance(estimator, AcidityDescriptors) or sorted(expected) == sorted(NOT_APPLICABLE)
     assert sum(r["status"] == "passed" for r in results) > 35
 
 
@@ -105,10 +110,7 @@ def test_every_column_has_its_publication_and_unit() -> None:
 
 
 def test_the_first_proton_is_the_more_acidic_one() -> None:
-    """2-Chlorobutanedioic acid: the COOH beside the chlorine; 3-carboxy end of cyanoacetylated acids alike.
-
-    By the inductive effect alone (Branch & Calvin 1941).
-    """
+    """2-Chlorobutanedioic and 2-fluoropentanedioic acid: the COOH beside the halogen (Branch & Calvin 1941)."""
     for smiles, near in (("OC(=O)C(Cl)CC(=O)O", "Cl"), ("OC(=O)C(F)CCC(=O)O", "F")):
         acid = read_acid(smiles)
         site = acid.sites[first_edge(acid)]
@@ -130,7 +132,9 @@ def test_a_bad_structure_is_named_or_left_empty() -> None:
 
 def test_in_a_pipeline_and_a_grid_search() -> None:
     line = make_pipeline(AcidityDescriptors(), StandardScaler(), Ridge())
-    search = GridSearchCV(line, {"ridge__alpha": [1.0, 30.0]}, cv=SHUFFLED, scoring="neg_mean_absolute_error").fit(SMILES, PKA)
+    search = GridSearchCV(line, {"ridge__alpha": [1.0, 30.0]}, cv=SHUFFLED, scoring="neg_mean_absolute_error").fit(
+        SMILES, PKA
+    )
     spread = float(np.mean(np.abs(PKA - np.median(PKA))))
     assert -search.best_score_ < 0.8 * spread  # the descriptors say something
 

@@ -43,7 +43,9 @@ def test_the_smallest_ring_of_each_atom() -> None:
     assert sorted(len(r) for r in g.rings) == [3, 6]
 
 
-@pytest.mark.parametrize("smiles", ["CCCCC(=O)O", "OC(=O)c1ccc2ccccc2c1", "OC(=O)C12CC3CC(CC(C3)C1)C2", "OC(=O)CC(O)(C(=O)O)CC(=O)O"])
+@pytest.mark.parametrize(
+    "smiles", ["CCCCC(=O)O", "OC(=O)c1ccc2ccccc2c1", "OC(=O)C12CC3CC(CC(C3)C1)C2", "OC(=O)CC(O)(C(=O)O)CC(=O)O"]
+)
 def test_distances_are_those_of_the_reference_library(smiles: str) -> None:
     mol = Chem.MolFromSmiles(smiles)
     g = Graph.from_mol(mol)

@@ -51,7 +51,12 @@ def test_a_cycle_that_does_not_close_is_fitted_by_least_squares() -> None:
     # Two sites, micro constants 3 and 4 from the acid, 5 and 6 to the dianion. Over A (site 0 first): 3 + 6 = 9; over
     # B: 4 + 5 = 9 would close. Raise the last by 0.4: each of the four edges takes a quarter, 0.1.
     network = cube(2)
-    assert [(int(q), int(i)) for q, i in zip(network.start, network.site, strict=True)] == [(0, 0), (0, 1), (1, 1), (2, 0)]
+    assert [(int(q), int(i)) for q, i in zip(network.start, network.site, strict=True)] == [
+        (0, 0),
+        (0, 1),
+        (1, 1),
+        (2, 0),
+    ]
     micro = np.array([3.0, 4.0, 6.4, 5.0])
     assert free_energies(micro, 2) == pytest.approx([0.0, 2.9, 4.1, 9.2], abs=1e-9)
     assert closure_defect(micro, 2) == pytest.approx(0.1, abs=1e-9)

@@ -87,6 +87,13 @@ def test_opposite_corners_of_cyclohexane() -> None:
     assert smiles == canonical("OC(=O)[C@H]1CC[C@@H](CC1)C(=O)O", "OC(=O)[C@H]1CC[C@H](CC1)C(=O)O")
 
 
+def test_cis_and_trans_where_no_hydrogen_is_left() -> None:
+    # 1,2-dimethylcyclopropane-1,2-dicarboxylic acid
+    acids, note = configurations(read_acid("OC(=O)C1(C)CC1(C)C(=O)O"))
+    assert "cis/trans" in note
+    assert len(acids) == 2
+
+
 def test_double_bond_and_ring_together() -> None:
     smiles, note = found("CC=CC1C(C(=O)O)C1C(=O)O")
     assert "E/Z and cis/trans" in note

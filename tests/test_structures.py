@@ -45,7 +45,10 @@ SAME = {
         "NCCCC[C@H](N)C(=O)O",
         ["[NH3+]CCCC[C@H]([NH3+])C(=O)[O-].[Cl-]", "NCCCC[C@H](N)C(=O)O.Cl.Cl", "[NH3+]CCCC[C@H](N)C(=O)[O-]"],
     ),
-    "3-aminobenzoic acid": ("Nc1cccc(C(=O)O)c1", ["NC1=CC=CC(=C1)C(O)=O", "NC1=CC(C(O)=O)=CC=C1", "[NH3+]c1cccc(c1)C([O-])=O"]),
+    "3-aminobenzoic acid": (
+        "Nc1cccc(C(=O)O)c1",
+        ["NC1=CC=CC(=C1)C(O)=O", "NC1=CC(C(O)=O)=CC=C1", "[NH3+]c1cccc(c1)C([O-])=O"],
+    ),
     "betaine": ("C[N+](C)(C)CC(=O)O", ["C[N+](C)(C)CC(=O)[O-]", "C[N+](C)(C)CC(=O)O.[Cl-]"]),
     "nitroacetic acid": ("OC(=O)C[N+](=O)[O-]", ["[O-]C(=O)C[N+](=O)[O-].[Na+]", "[O-][N+](=O)CC(O)=O"]),
     "sulfoacetic acid": ("OC(=O)CS(=O)(=O)O", ["OC(=O)CS(=O)(=O)[O-].[Na+]", "[O-]C(=O)CS(=O)(=O)[O-].[Na+].[Na+]"]),

@@ -20,7 +20,10 @@ def write(folder: Path, text: str, encoding: str = "utf-8") -> Path:
 def test_the_smallest_table(tmp_path: Path) -> None:
     # invented values
     rows = read_table(write(tmp_path, "smiles,pka\nCC(=O)O,4.7\n[O-]C(=O)CCl.[Na+],2.9\n"))
-    assert [(m.acid.smiles, m.step, m.pka, m.uncertainty) for m in rows] == [("CC(=O)O", 1, 4.7, 0.05), ("O=C(O)CCl", 1, 2.9, 0.05)]
+    assert [(m.acid.smiles, m.step, m.pka, m.uncertainty) for m in rows] == [
+        ("CC(=O)O", 1, 4.7, 0.05),
+        ("O=C(O)CCl", 1, 2.9, 0.05),
+    ]
     assert [(m.name, m.family, m.source) for m in rows] == [("", "", "")] * 2
 
 

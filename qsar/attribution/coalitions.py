@@ -179,9 +179,7 @@ def match_atoms(acid: Acid, isomer: Acid) -> tuple[int, ...]:
 
 def _may_be_open(acid: Acid) -> bool:
     graph = acid.graph
-    ring_acids = sum(
-        any(graph.ring_size[b] and graph.saturated(b) for b in graph.neighbours[s]) for s in acid.sites
-    )
+    ring_acids = sum(any(graph.ring_size[b] and graph.saturated(b) for b in graph.neighbours[s]) for s in acid.sites)
     if ring_acids > 1:
         return True
     return any(

@@ -6,6 +6,8 @@ Color Universal Design, 2008). The sign stands in the label as well, so that gre
 
 from __future__ import annotations
 
+from typing import Any
+
 from rdkit import Chem
 from rdkit.Chem import rdDepictor
 from rdkit.Chem.Draw import rdMolDraw2D
@@ -71,7 +73,7 @@ def plain_png(smiles: str, width: int = 360, height: int = 200) -> bytes:
 
 
 def _plain_options(drawer: rdMolDraw2D.MolDraw2D) -> None:
-    options = drawer.drawOptions()
+    options: Any = drawer.drawOptions()
     options.useBWAtomPalette()
     options.clearBackground = False
     options.padding = 0.06
@@ -95,7 +97,7 @@ def _draw(drawer: rdMolDraw2D.MolDraw2D, explanation: Explanation) -> None:
             if bond.GetBeginAtomIdx() in members and bond.GetEndAtomIdx() in members:
                 bonds[bond.GetIdx()] = colour
         _label(mol, line)
-    options = drawer.drawOptions()
+    options: Any = drawer.drawOptions()
     options.useBWAtomPalette()
     options.setAnnotationColour((0.0, 0.0, 0.0))
     options.setBondNoteColour((0.0, 0.0, 0.0))

@@ -15,7 +15,8 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
-from math import factorial, prod
+from itertools import pairwise
+from math import comb, factorial, prod
 
 import numpy as np
 from numpy.typing import NDArray
@@ -57,11 +58,24 @@ class Forest:
             above = self.carrier[above]
         return frozenset(found)
 
-    def coalitions(self) -> list[Coalition]:
-        """All closed coalitions, the empty one first."""
+    def coalitions(self, alike: Sequence[Sequence[int]] = (), most: int | None = None) -> list[Coalition]:
+        """All closed coalitions, the empty one first.
+
+        Parameters
+        ----------
+        alike : sequence of sequence of int
+            Sets of interchangeable players; of coalitions that differ only by them one is listed, the one that
+            holds the first members of each set.
+        most : int, optional
+            Stop once there are more than so many.
+        """
+        before = {b: a for members in alike for a, b in pairwise(members)}
         found: list[Coalition] = [frozenset()]
         for player, carrier in enumerate(self.carrier):
-            found += [s | {player} for s in found if carrier is None or carrier in s]
+            needed = {x for x in (carrier, before.get(player)) if x is not None}
+            found += [s | {player} for s in found if needed <= s]
+            if most is not None and len(found) > most:
+                break
         return found
 
     def orders(self, members: Coalition) -> int:
@@ -112,38 +126,51 @@ class Shares:
         return result
 
 
-def shares(forest: Forest, orders: int = ORDERS, seed: int = 1) -> Shares:
-    """Coalitions and weights of a game: all of them up to ten players, sampled orders beyond.
+def shares(forest: Forest, alike: Sequence[Sequence[int]] = (), orders: int = ORDERS, seed: int = 1) -> Shares:
+    """Coalitions and weights of a game: exact up to ten players, sampled orders beyond.
+
+    More than ten players are still exact where no more coalitions than those of ten free ones, 1024, are left by
+    precedence and by interchangeable players.
 
     Parameters
     ----------
     forest : Forest
+    alike : sequence of sequence of int
+        Sets of players that can be interchanged without any change; none of them carries another.
     orders : int
-        Orders sampled beyond ten players, an even number.
+        Orders sampled beyond that, an even number.
     seed : int
 
     Returns
     -------
     Shares
     """
-    return _exact(forest) if forest.n <= EXACT_UP_TO else _sampled(forest, orders, seed)
+    few = len(forest.coalitions(alike, most=2**EXACT_UP_TO)) <= 2**EXACT_UP_TO
+    return _exact(forest, alike) if few else _sampled(forest, orders, seed)
 
 
-def _exact(forest: Forest) -> Shares:
-    found = forest.coalitions()
+def _exact(forest: Forest, alike: Sequence[Sequence[int]]) -> Shares:
+    found = forest.coalitions(alike)
     place = {s: k for k, s in enumerate(found)}
     everyone = frozenset(range(forest.n))
     total = forest.orders(everyone)
     before = [forest.orders(s) for s in found]
+    after = [forest.orders(everyone - s) for s in found]
+    group = {i: tuple(members) for members in alike for i in members}
+    sets = [group.get(i, (i,)) for i in range(forest.n)]
     matrix = np.zeros((forest.n, len(found)))
     for k, s in enumerate(found):
+        # how many coalitions the listed one stands for
+        copies = prod(comb(len(m), sum(i in s for i in m)) for m in alike)
         for i in sorted(everyone - s):
-            carrier = forest.carrier[i]
-            if carrier is None or carrier in s:
-                after = s | {i}
-                weight = before[k] * forest.orders(everyone - after) / total
-                matrix[i, place[after]] += weight
-                matrix[i, k] -= weight
+            grown = place.get(s | {i})
+            if grown is None:
+                continue
+            members = sets[i]
+            free = sum(j not in s for j in members)
+            weight = copies * free * before[k] * after[grown] / total / len(members)
+            matrix[list(members), grown] += weight
+            matrix[list(members), k] -= weight
     return Shares(found, matrix)
 
 

@@ -79,7 +79,8 @@ def steps_figure(explanation: Explanation, title: str = "") -> Figure:
     ax.grid(axis="x", color="0.92", linewidth=0.6)
     ax.set_axisbelow(True)
     ax.spines[["top", "right"]].set_visible(False)
-    figure.subplots_adjust(left=0.3, right=0.98, top=1 - 0.42 / figure.get_figheight(), bottom=0.55 / figure.get_figheight())
+    height = figure.get_figheight()
+    figure.subplots_adjust(left=0.3, right=0.98, top=1 - 0.42 / height, bottom=0.55 / height)
     return figure
 
 
@@ -227,7 +228,8 @@ def distance_figure(explanations: Sequence[Explanation], name: str) -> Figure:
     ax.set_xticks(range(int(min(bonds)), int(max(bonds)) + 1))
     ax.margins(x=0.08, y=0.16)
     coverage = 100 * explanations[0].coverage
-    ax.set_title(f"{_plain(name)}: contribution against distance, with {coverage:g} % intervals", fontsize=9, loc="left")
+    title = f"{_plain(name)}: contribution against distance, with {coverage:g} % intervals"
+    ax.set_title(title, fontsize=9, loc="left")
     ax.spines[["top", "right"]].set_visible(False)
     figure.subplots_adjust(left=0.14, right=0.97, top=0.91, bottom=0.14)
     return figure

@@ -112,7 +112,5 @@ def _rows(model: Model, explanations: Sequence[Explanation]) -> list[SurveyRow]:
     for key, found in values.items():
         mean = fmean(found)
         name, on = names[key]
-        rows.append(
-            SurveyRow(name, on, key[1], len(found), mean, min(found), max(found), pairs.witnesses(key, mean))
-        )
+        rows.append(SurveyRow(name, on, key[1], len(found), mean, min(found), max(found), pairs.witnesses(key, mean)))
     return sorted(rows, key=lambda row: (row.on, row.name, row.bonds))

@@ -5,7 +5,7 @@ from __future__ import annotations
 import csv
 from collections.abc import Iterable, Iterator, Sequence
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from rdkit import Chem
 
@@ -98,7 +98,7 @@ def given_order(smiles: str, explanation: Explanation) -> dict[int, int]:
     standardised SMILES.
     """
     own = {a.GetIdx(): a.GetIdx() for a in explanation.acid.mol.GetAtoms()}
-    params = Chem.SmilesParserParams()
+    params: Any = Chem.SmilesParserParams()
     params.removeHs = False
     given = Chem.MolFromSmiles(smiles, params)
     if given is None:

@@ -84,9 +84,7 @@ class MeasuredPairs:
         lines = tuple(
             line
             if line.substituent == SITE_STATISTICS
-            else replace(
-                line, witnesses=self.witnesses(key_of(explanation.decomposition, k), line.contribution)
-            )
+            else replace(line, witnesses=self.witnesses(key_of(explanation.decomposition, k), line.contribution))
             for k, line in enumerate(explanation.contributions)
         )
         return replace(explanation, contributions=lines)
@@ -134,9 +132,9 @@ def find_pairs(rows: Iterable[tuple[str, str, int, float]]) -> MeasuredPairs:
             single[_flat(acid.smiles)] = name, pka
     found: dict[Key, list[Pair]] = defaultdict(list)
     for smiles, name, step, pka in rows:
-        acid = acids.get(smiles)
-        if acid is None:
+        if smiles not in acids:
             continue
+        acid = acids[smiles]
         statistic = _statistic(acid, step)
         if statistic is None:
             continue
@@ -167,4 +165,6 @@ def _statistic(acid: Acid, step: int) -> float | None:
 
 def _flat(smiles: str) -> str:
     """SMILES without configuration at centres, which pairs may state or leave open; E/Z stays."""
-    return smiles if "@" not in smiles else Chem.CanonSmiles(smiles.replace("@", ""))
+    if "@" not in smiles:
+        return smiles
+    return str(Chem.MolToSmiles(Chem.MolFromSmiles(smiles.replace("@", ""))))

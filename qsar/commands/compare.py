@@ -45,7 +45,9 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument(
         "--source", metavar="NAME", help="use only rows of this source, such as in-house (column source)"
     )
-    parser.add_argument("--coverage", type=float, default=0.9, metavar="FRACTION", help="of the intervals (default: 0.9)")
+    parser.add_argument(
+        "--coverage", type=float, default=0.9, metavar="FRACTION", help="of the intervals (default: 0.9)"
+    )
     parser.add_argument("-o", "--output", type=Path, metavar="FILE", help="write every pair as CSV")
     parser.add_argument("--models", type=Path, metavar="FOLDER", help="folder of your models")
 
@@ -133,7 +135,11 @@ def report(c: Comparison) -> list[str]:
     """Lines for people; the verdict comes first."""
     width = max([12, *(len(d.label) for d in (*c.by_family, *c.by_verdict))])
     first, second = c.names
-    lines = [c.sentence + ".", "", f"A = {first}, B = {second}; errors in pKa units, B minus A below zero where B is better"]
+    lines = [
+        c.sentence + ".",
+        "",
+        f"A = {first}, B = {second}; errors in pKa units, B minus A below zero where B is better",
+    ]
     head = f"{'':{width}}  steps  acids  error A  error B  B minus A"
     for title, found in (("", [c.overall]), ("by family", c.by_family), ("by verdict of B", c.by_verdict)):
         lines += ["", title, head] if title else [head]

@@ -119,12 +119,8 @@ def _curate(args: argparse.Namespace) -> Curated:
     from qsar.curation.readers import read_rows
     from qsar.curation.rules import Defaults
 
-    rows, columns = read_rows(
-        args.file, _named(args.column), args.quantity, lambda text: say(f"acidity: note: {text}")
-    )
-    defaults = Defaults(
-        args.temperature, args.ionic_strength, args.constant or "", args.uncertainty, columns.quantity
-    )
+    rows, columns = read_rows(args.file, _named(args.column), args.quantity, lambda text: say(f"acidity: note: {text}"))
+    defaults = Defaults(args.temperature, args.ionic_strength, args.constant or "", args.uncertainty, columns.quantity)
     return curate(rows, defaults, args.limit)
 
 
@@ -158,9 +154,7 @@ def _examine(args: argparse.Namespace, curated: Curated) -> list[Flag]:
         return examine(curated.kept, model, done)
 
 
-def _report(
-    source: Path, output: Path, left: Path, questions: Path, curated: Curated, flags: list[Flag]
-) -> None:
+def _report(source: Path, output: Path, left: Path, questions: Path, curated: Curated, flags: list[Flag]) -> None:
     shown = sorted([*curated.refused.items(), *((c.row.number, c.reason) for c in curated.conflicts)])
     for number, reason in shown[:_SHOWN]:
         say(f"acidity: {source.name}, row {number}: {reason}")

@@ -19,6 +19,7 @@ from qsar.reading import READABLE, Record, count_records, read_sources
 if TYPE_CHECKING:
     from qsar.attribution import Explained, Explanation
     from qsar.model import Model
+    from qsar.structures import Acid, StructureError
 
 HELP = "show what each substituent contributed to a pKa"
 
@@ -48,9 +49,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         help="write one HTML file with dossier, figures and a statement for each acid: FOLDER/report.html, "
         "or reports/NAME.html in the current folder",
     )
-    parser.add_argument(
-        "--report-file", type=Path, metavar="FILE", help="the same, to a file of this name"
-    )
+    parser.add_argument("--report-file", type=Path, metavar="FILE", help="the same, to a file of this name")
     parser.add_argument(
         "--plots",
         choices=("all", "structures", "none"),
@@ -64,9 +63,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         metavar="FRACTION",
         help="fraction of true values that the intervals are meant to hold (default: 0.9)",
     )
-    parser.add_argument(
-        "--model", type=Path, metavar="FOLDER", help="folder of another model than the shipped one"
-    )
+    parser.add_argument("--model", type=Path, metavar="FOLDER", help="folder of another model than the shipped one")
     parser.add_argument(
         "--progress", action="store_true", help="show progress also where standard error is no terminal"
     )
@@ -137,7 +134,8 @@ def run(args: argparse.Namespace) -> int:
     if report is not None and found.records:
         from qsar.report import write_report
 
-        with progress(lambda: None, "acids of the model's own table", wanted=wanted) as advance:
+        own = len({s for s in model.library.smiles if s})
+        with progress(lambda: own, "acids of the model's own table", wanted=wanted) as advance:
             write_report(report, model, found.records, found.answers, args.coverage, done=advance)
         say(f"{report}: report on {len(found.records):,} inputs")
     _summarise(found, folder)
@@ -179,7 +177,7 @@ def _explained(
         yield records, explain_many(model, [readable(r) for r in records], args.coverage)
 
 
-def readable(record: Record) -> object:
+def readable(record: Record) -> str | Acid | StructureError:
     """What the model takes: a SMILES, an acid, or the reason why there is neither."""
     from qsar.structures import StructureError, acid_from_mol
 

@@ -32,9 +32,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         help="clean CSV of your measurements (see `acidity curate`), used besides the reference table",
     )
     parser.add_argument("--only", action="store_true", help="train on --data alone, without the reference table")
-    parser.add_argument(
-        "--until", metavar="DAY", help="use only rows of --data measured up to this day (YYYY-MM-DD)"
-    )
+    parser.add_argument("--until", metavar="DAY", help="use only rows of --data measured up to this day (YYYY-MM-DD)")
     parser.add_argument(
         "--correct-offset",
         action="store_true",
@@ -183,9 +181,7 @@ def _train(args: argparse.Namespace, inputs: _Inputs, settings: Settings, name: 
     data = training_set(inputs.measurements, weights_of(inputs.measurements))
     with progress(lambda: settings.folds, "folds", wanted=True) as done:
         members, fold = fit_members_resumably(data, settings, cache, done, lambda t: say(f"acidity: note: {t}"))
-    return assemble(
-        data, members, fold, name, _provenance(args, inputs), withhold_structures=args.withhold_structures
-    )
+    return assemble(data, members, fold, name, _provenance(args, inputs), withhold_structures=args.withhold_structures)
 
 
 def _provenance(args: argparse.Namespace, inputs: _Inputs) -> dict[str, Any]:
@@ -214,8 +210,8 @@ def _provenance(args: argparse.Namespace, inputs: _Inputs) -> dict[str, Any]:
 def _report(args: argparse.Namespace, model: Model, inputs: _Inputs, name: str, target: Path) -> None:
     card = model.card
     if inputs.offset is not None:
-        done = "taken off" if inputs.corrected else "not corrected (--correct-offset takes it off)"
-        print(f"offset: {inputs.offset.sentence}; {done if inputs.offset.is_clear or inputs.corrected else 'not corrected'}")
+        option = "not corrected (--correct-offset takes it off)" if inputs.offset.is_clear else "not corrected"
+        print(f"offset: {inputs.offset.sentence}; {'taken off' if inputs.corrected else option}")
     print(
         f"{name}: {card['steps']} steps of {card['acids']} acids; mean absolute error of acids left out "
         f"{card['metrics']['out_of_fold_mean_absolute_error']:.3f}; saved in {target}"

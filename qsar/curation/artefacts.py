@@ -11,6 +11,7 @@ import math
 import re
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 from rdkit import Chem
 
@@ -95,10 +96,14 @@ def _ionic_strength(case: Case) -> Iterator[Suspicion]:
     corrected = abs(row.pka - row.measured) > 1e-9
     if corrected:
         value = row.measured
-        explanation = f"the value was already extrapolated to I = 0 and was corrected a second time by {row.pka - row.measured:+.2f}"
+        explanation = (
+            f"the value was already extrapolated to I = 0 and was corrected a second time by {row.pka - value:+.2f}"
+        )
     else:
         value = row.measured - float(pka_shift(z, 0.15, "concentration"))
-        explanation = f"measured at an ionic strength near 0.15 mol/L that the row does not state ({value - row.pka:+.2f})"
+        explanation = (
+            f"measured at an ionic strength near 0.15 mol/L that the row does not state ({value - row.pka:+.2f})"
+        )
     yield Suspicion(
         "ionic-strength shift",
         explanation,
@@ -252,7 +257,7 @@ def _hydrate_or_lactone(case: Case) -> Iterator[Suspicion]:
                 case.row.pka - case.expected[case.step - 1],
                 0.8,
                 0.05,
-                "¹³C NMR in water: carbonyl, gem-diol and lactone carbons show the ratio; titrate fast after dissolving",
+                "¹³C NMR in water: carbonyl, gem-diol and lactone carbons show the ratio; titrate at once",
             )
 
 
@@ -263,7 +268,7 @@ def _transposed_digits(case: Case) -> Iterator[Suspicion]:
     text = found[0].replace(",", ".")
     places = [k for k, c in enumerate(text) if c.isdigit()]
     variants = set()
-    for a, b in zip(places, places[1:], strict=False):
+    for a, b in pairwise(places):
         swapped = list(text)
         swapped[a], swapped[b] = swapped[b], swapped[a]
         variants.add("".join(swapped))

@@ -53,7 +53,9 @@ class Conflict:
         )
 
 
-def weighted_median(values: Sequence[float] | NDArray[np.float64], weights: Sequence[float] | NDArray[np.float64]) -> float:
+def weighted_median(
+    values: Sequence[float] | NDArray[np.float64], weights: Sequence[float] | NDArray[np.float64]
+) -> float:
     """Value that half of the weight lies below and half above (the lower and upper one averaged where they tie).
 
     Parameters
@@ -95,7 +97,7 @@ def settle_steps(rows: Sequence[Usable]) -> tuple[list[Usable], list[tuple[int, 
         if row.step is None:
             groups.setdefault(one_spelling(row.acid.smiles), []).append(row)
     taken = {one_spelling(r.acid.smiles) for r in settled}
-    refused = []
+    refused: list[tuple[int, Refusal]] = []
     for key, group in groups.items():
         n = len(group[0].acid.sites)
         distinct = len({round(r.measured, 6) for r in group}) == len(group)

@@ -70,9 +70,7 @@ class Flag:
         )
 
 
-def examine(
-    rows: Sequence[Merged], model: Model, done: Callable[[int], object] = lambda _: None
-) -> list[Flag]:
+def examine(rows: Sequence[Merged], model: Model, done: Callable[[int], object] = lambda _: None) -> list[Flag]:
     """Find rows far from expectation and rank what would explain them.
 
     Parameters

@@ -85,9 +85,7 @@ def _as_row(number: int, step: OpenStep) -> RawRow:
 def write_excluded(path: Path, dataset: CuratedDataset) -> None:
     """Write every row of the dataset that is not used, and every step that the rules refuse."""
     rows = {row.number: row.cells for row in dataset.curated.rows}
-    lines: list[list[object]] = [
-        [e.line, "refused", e.reason, e.smiles, e.label] for e in dataset.excluded
-    ]
+    lines: list[list[object]] = [[e.line, "refused", e.reason, e.smiles, e.label] for e in dataset.excluded]
     for number, reason in dataset.curated.refused.items():
         lines.append(["", "refused", reason, rows[number]["smiles"], f"step {rows[number]['step']}"])
     for conflict in dataset.curated.conflicts:

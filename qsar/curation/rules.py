@@ -326,7 +326,7 @@ def to_standard_state(row: Usable) -> Usable:
         changes.append(f"ionic strength not stated: taken as 0, uncertainty widened by {spread:.3f}")
     elif strength and constant != "thermodynamic":
         kinds = [float(pka_shift(z, strength, kind, degrees)) for kind in CONSTANT_KINDS]
-        shift = kinds[CONSTANT_KINDS.index(constant or "mixed")]  # type: ignore[arg-type]
+        shift = kinds[CONSTANT_KINDS.index(constant or "mixed")]
         pka -= shift
         if constant:
             changes.append(

@@ -215,7 +215,9 @@ class Registry:
         with self._locked():
             folder = self.path(name)
             if folder.parent != self.folder:
-                raise UserError(f"{name} came with the program and is not deleted; use another with `acidity models use`")
+                raise UserError(
+                    f"{name} came with the program and is not deleted; use another with `acidity models use`"
+                )
             was_used = (self.folder / IN_USE).exists() and self._chosen_or_none() == name
             if was_used:
                 self._write_choice(DEFAULT_MODEL)
@@ -284,7 +286,9 @@ class Registry:
             self.folder.mkdir(parents=True, exist_ok=True)
             handle = (self.folder / _LOCK).open("a+b")
         except OSError as problem:
-            raise UserError(f"cannot write in {self.folder}: {problem.strerror}; choose another with --models") from problem
+            raise UserError(
+                f"cannot write in {self.folder}: {problem.strerror}; choose another with --models"
+            ) from problem
         with handle:
             _lock(handle)
             yield

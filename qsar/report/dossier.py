@@ -113,10 +113,11 @@ def dossier(model: Model, done: Callable[[int], object] = lambda _: None) -> Dos
     names = sorted({f for f in library.family if f})
     fits = [Fit.of(f, library.pka[family == f], library.pka_without[family == f]) for f in names]
     predicted = {(e.smiles, e.step): e.pka for e in found.explanations}
-    rows = [k for k, key in enumerate(zip(library.smiles, library.step, strict=True)) if (key[0], int(key[1])) in predicted]
+    keys = [(smiles, int(step)) for smiles, step in zip(library.smiles, library.step, strict=True)]
+    rows = [k for k, key in enumerate(keys) if key in predicted]
     fitted = None
     if rows:
-        values = np.array([predicted[library.smiles[k], int(library.step[k])] for k in rows])
+        values = np.array([predicted[keys[k]] for k in rows])
         fitted = Fit.of("all acids, in the fit", library.pka[rows], values)
     return Dossier(
         model.card,

@@ -14,6 +14,7 @@ from qsar.structures import Acid, StructureError, read_acid
 
 if TYPE_CHECKING:
     from qsar.model.model import Model
+    from qsar.writing import Row
 
 PARENTS: tuple[tuple[str, str], ...] = (
     ("formic", "O=CO"),
@@ -232,6 +233,13 @@ def report(desk: Desk, smiles: Sequence[tuple[str, str]], coverage: float) -> li
     ]
 
 
+def export(desk: Desk, kind: str, rows: Sequence[Row]) -> bytes:
+    """Rows as a file."""
+    from qsar.service.exports import table_file
+
+    return table_file(kind, rows)
+
+
 def decide(desk: Desk, kind: str, question: dict[str, Any]) -> dict[str, Any]:
     """Answer to a decision: base, window, buffer, risk."""
     from qsar.service.decide import DECISIONS
@@ -242,7 +250,8 @@ def decide(desk: Desk, kind: str, question: dict[str, Any]) -> dict[str, Any]:
 TASKS: dict[str, Callable[..., Any]] = {
     task.__name__: task
     for task in (
-        about, read_text, read_file, predict, acid, swap, groups, all_groups, drawing, parents, report, decide,
+        about, read_text, read_file, predict, acid, swap, groups, all_groups, drawing, parents, report, export,
+        decide,
     )
 }  # fmt: skip
 

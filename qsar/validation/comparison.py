@@ -233,7 +233,7 @@ class Comparison:
 
     @property
     def outcome(self) -> str:
-        """"first", "second", "same" or "unknown"."""
+        """Which is better: first, second, same (equally good) or unknown (not enough data)."""
         d = self.overall
         if d.acids < LEAST_ACIDS:
             return "unknown"
@@ -250,7 +250,8 @@ class Comparison:
         d, (first, second) = self.overall, self.names
         over = f"over {_count(d.steps, 'step')} of {_count(d.acids, 'acid')}"
         if d.acids < LEAST_ACIDS:
-            return f"not enough data to tell: {_count(d.acids, 'acid')} that neither model has seen; at least {LEAST_ACIDS} are needed"
+            few = _count(d.acids, "acid")
+            return f"not enough data to tell: {few} that neither model has seen, and at least {LEAST_ACIDS} are needed"
         figures = (
             f"mean absolute error {d.errors[1]:.3f} against {d.errors[0]:.3f} {over}, difference {d.value:+.3f} "
             f"(95 % interval {d.low:+.3f} to {d.high:+.3f})"

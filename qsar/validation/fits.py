@@ -10,10 +10,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from qsar.descriptors import LOWERS
-from qsar.model.boosting import trees_of
 from qsar.model.kernel import Scaling, fit_trend
 from qsar.model.library import Library
-from qsar.model.members import START_NEUTRAL, Members, Settings, fit_member
+from qsar.model.members import START_NEUTRAL, Settings, fit_member, join_members
 from qsar.model.training_set import TrainingSet, latent_targets, training_set
 from qsar.structures import read_acid
 from qsar.table import Measurement
@@ -89,6 +88,13 @@ def problem_of(library: Library, settings: Settings) -> Problem:
 
 def predictions(problem: Problem, fit: Fit) -> Floats:
     """What the fitted learner says of all measured steps, shape (n_steps,)."""
+    from threadpoolctl import threadpool_limits
+
+    with threadpool_limits(1):  # sums in one order, so that a number does not depend on the machine's threads
+        return _predictions(problem, fit)
+
+
+def _predictions(problem: Problem, fit: Fit) -> Floats:
     data = problem.data if fit.pka is None else replace(problem.data, pka=fit.pka)
     train = fit.train
     if fit.learner == "member":
@@ -114,16 +120,7 @@ def _scaling(data: TrainingSet, train: Flags) -> Scaling:
 def _member(data: TrainingSet, train: Flags, settings: Settings) -> Floats:
     scaling = _scaling(data, train)
     fitted = fit_member(data, scaling, train, settings, settings.seed)
-    members = Members(
-        settings,
-        scaling,
-        scaling(data.x[:, ~LOWERS]),
-        fitted.dual[None],
-        fitted.slopes[None],
-        fitted.offset,
-        trees_of([fitted.booster]),
-    )
-    trend, boosted = members.predict(data.x)
+    trend, boosted = join_members(data, scaling, [fitted], settings).predict(data.x)
     micro: Floats = trend[0] + boosted[0]
     return micro
 

@@ -1,5 +1,8 @@
-"""Numbers as people type them. Spellings are common practice, no source; brackets behind a number are the concise
-notation of its standard uncertainty (JCGM 100:2008, 7.2.2)."""
+"""Numbers as people type them.
+
+Spellings are common practice, no source; brackets behind a number are the concise notation of its standard
+uncertainty (JCGM 100:2008, 7.2.2).
+"""
 
 from __future__ import annotations
 

@@ -29,11 +29,15 @@ def test_with_equal_weights_it_is_the_median(values: list[float]) -> None:
 @given(st.lists(st.tuples(st.floats(-10, 10), st.integers(1, 9)), min_size=1, max_size=12))
 def test_a_weight_counts_like_that_many_copies(pairs: list[tuple[float, int]]) -> None:
     copies = [v for v, w in pairs for _ in range(w)]
-    assert weighted_median([v for v, _ in pairs], [float(w) for _, w in pairs]) == pytest.approx(float(np.median(copies)))
+    assert weighted_median([v for v, _ in pairs], [float(w) for _, w in pairs]) == pytest.approx(
+        float(np.median(copies))
+    )
 
 
 def test_duplicates_are_merged_with_the_rows_named() -> None:
-    merged, conflicts = merge(rows(("CC(=O)O", "4.76"), ("CCC(=O)O", "4.87"), ("OC(C)=O", "4.72"), ("CC([O-])=O.[K+]", "4.75")))
+    merged, conflicts = merge(
+        rows(("CC(=O)O", "4.76"), ("CCC(=O)O", "4.87"), ("OC(C)=O", "4.72"), ("CC([O-])=O.[K+]", "4.75"))
+    )
     assert not conflicts
     assert [(m.rows, m.row.pka) for m in merged] == [((2, 4, 5), 4.75), ((3,), 4.87)]
 
@@ -64,7 +68,9 @@ def test_two_against_two_are_all_set_apart() -> None:
 
 
 def test_precise_rows_decide() -> None:
-    merged, _ = merge(rows(("CC(=O)O", "4.76", "1", "0.01"), ("CC(=O)O", "4.60", "1", "0.1"), ("CC(=O)O", "4.62", "1", "0.1")))
+    merged, _ = merge(
+        rows(("CC(=O)O", "4.76", "1", "0.01"), ("CC(=O)O", "4.60", "1", "0.1"), ("CC(=O)O", "4.62", "1", "0.1"))
+    )
     assert merged[0].row.pka == 4.76
 
 

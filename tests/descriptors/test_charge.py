@@ -13,8 +13,15 @@ NEUTRAL: list[tuple[str, dict[str, float]]] = [
     (
         "NCC(=O)O",
         {
-            "cations": 1, "cation_g50": 1, "cation_g75": 1, "cation_inverse": 1, "cation_alpha": 1,
-            "anions": 0, "net_charge": 1, "cation_in_ring": 0, "cation_pairs": 0,
+            "cations": 1,
+            "cation_g50": 1,
+            "cation_g75": 1,
+            "cation_inverse": 1,
+            "cation_alpha": 1,
+            "anions": 0,
+            "net_charge": 1,
+            "cation_in_ring": 0,
+            "cation_pairs": 0,
         },
     ),
     # beta-alanine: n = 2
@@ -23,8 +30,12 @@ NEUTRAL: list[tuple[str, dict[str, float]]] = [
     (
         "NCCCC[C@H](N)C(=O)O",
         {
-            "cations": 2, "cation_g50": 1 + 0.5**4, "cation_g75": 1 + 0.75**4, "cation_inverse": 1.2,
-            "net_charge": 2, "cation_pairs": 2,
+            "cations": 2,
+            "cation_g50": 1 + 0.5**4,
+            "cation_g75": 1 + 0.75**4,
+            "cation_inverse": 1.2,
+            "net_charge": 2,
+            "cation_pairs": 2,
         },
     ),
     # isonicotinic acid: the ring that carries COOH is itself protonated
@@ -32,10 +43,19 @@ NEUTRAL: list[tuple[str, dict[str, float]]] = [
     # sulfoacetic acid: sulfonate, n = 1
     ("OC(=O)CS(=O)(=O)O", {"anions": 1, "anion_nearest": 1, "net_charge": -1, "cations": 0}),
     # oxalic acid: the other group is the neighbour itself (n = 0)
-    ("OC(=O)C(=O)O", {"carboxyls": 1, "carboxyl_g40": 1, "carboxyl_g70": 1, "carboxyl_nearest": 2, "carboxyl_geminal": 0}),
+    (
+        "OC(=O)C(=O)O",
+        {"carboxyls": 1, "carboxyl_g40": 1, "carboxyl_g70": 1, "carboxyl_nearest": 2, "carboxyl_geminal": 0},
+    ),
     # malonic (n = 1), succinic (n = 2), glutaric acid (n = 3)
-    ("OC(=O)CC(=O)O", {"carboxyls": 1, "carboxyl_g40": 1, "carboxyl_nearest": 1, "carboxyl_geminal": 1, "carboxyl_path_bulk": 0}),
-    ("OC(=O)CCC(=O)O", {"carboxyls": 1, "carboxyl_g40": 0.4, "carboxyl_g70": 0.7, "carboxyl_nearest": 0.5, "carboxyl_geminal": 0}),
+    (
+        "OC(=O)CC(=O)O",
+        {"carboxyls": 1, "carboxyl_g40": 1, "carboxyl_nearest": 1, "carboxyl_geminal": 1, "carboxyl_path_bulk": 0},
+    ),
+    (
+        "OC(=O)CCC(=O)O",
+        {"carboxyls": 1, "carboxyl_g40": 0.4, "carboxyl_g70": 0.7, "carboxyl_nearest": 0.5, "carboxyl_geminal": 0},
+    ),
     ("OC(=O)CCCC(=O)O", {"carboxyl_g40": 0.16, "carboxyl_g70": 0.49, "carboxyl_nearest": 1 / 3, "anions": 0}),
     # 2,2-dimethylsuccinic acid: two methyls and one quaternary carbon on the path; weight 0.5**(n - 2) = 1
     ("OC(=O)CC(C)(C)C(=O)O", {"carboxyl_path_bulk": 2, "carboxyl_path_quaternary": 1, "carboxyl_path_unsaturated": 0}),
@@ -59,8 +79,29 @@ NEUTRAL: list[tuple[str, dict[str, float]]] = [
     ("OC(=O)C1=C(CCCC1)C(=O)O", {"vicinal_splay": 0}),
 ]
 IONISED: list[tuple[str, dict[str, float]]] = [
-    ("OC(=O)CC(=O)O", {"anions": 1, "anion_g50": 1, "anion_g75": 1, "anion_inverse": 1, "anion_nearest": 1, "carboxyls": 0, "net_charge": -1}),
-    ("OC(=O)CCC(=O)O", {"anions": 1, "anion_g50": 0.5, "anion_g75": 0.75, "anion_inverse": 0.5, "anion_nearest": 0.5, "carboxyl_g40": 0}),
+    (
+        "OC(=O)CC(=O)O",
+        {
+            "anions": 1,
+            "anion_g50": 1,
+            "anion_g75": 1,
+            "anion_inverse": 1,
+            "anion_nearest": 1,
+            "carboxyls": 0,
+            "net_charge": -1,
+        },
+    ),
+    (
+        "OC(=O)CCC(=O)O",
+        {
+            "anions": 1,
+            "anion_g50": 0.5,
+            "anion_g75": 0.75,
+            "anion_inverse": 0.5,
+            "anion_nearest": 0.5,
+            "carboxyl_g40": 0,
+        },
+    ),
     ("OC(=O)CC(C)(C)C(=O)O", {"anion_path_bulk": 2, "anion_path_quaternary": 1, "carboxyl_path_bulk": 2}),
     ("OC(=O)/C=C/C(=O)O", {"anion_cis": -1}),
     ("OC(=O)/C=C\\C(=O)O", {"anion_cis": 1, "carboxyl_cis": 1}),

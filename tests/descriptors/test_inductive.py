@@ -6,6 +6,7 @@ Attenuation by a constant factor a bond: Branch & Calvin 1941; sigma_I: Charton,
 
 from __future__ import annotations
 
+from itertools import pairwise
 from math import log, sqrt
 
 import pytest
@@ -125,7 +126,10 @@ def test_every_column_is_worked() -> None:
 @pytest.mark.parametrize(
     ("plain", "edited"),
     [
-        ("CCCC(=O)O", ["CC(Cl)CC(=O)O", "CC(F)(F)CC(=O)O", "N#CC(C)CC(=O)O", "CC([N+](=O)[O-])CC(=O)O", "BrCC(I)CC(=O)O"]),
+        (
+            "CCCC(=O)O",
+            ["CC(Cl)CC(=O)O", "CC(F)(F)CC(=O)O", "N#CC(C)CC(=O)O", "CC([N+](=O)[O-])CC(=O)O", "BrCC(I)CC(=O)O"],
+        ),
         ("OC(=O)C1CCCC1", ["OC(=O)C1(F)CCCC1", "OC(=O)C1CC(F)(F)CC1", "OC(=O)C1(C#N)CCCC1"]),
         ("Cc1ccccc1C(=O)O", ["FC(F)(F)c1ccccc1C(=O)O", "N#CCc1ccccc1C(=O)O"]),
         ("C/C=C/C(=O)O", ["FC/C=C/C(=O)O", "FC(F)(F)/C=C/C(=O)O"]),
@@ -147,7 +151,7 @@ def test_constrained_columns_fall_with_distance_and_grow_with_number() -> None:
     lowers = [n for n, low in zip(NAMES, LOWERS, strict=True) if low]
     chain = ["OC(=O)" + "C" * k + "C(Cl)" + "C" * (6 - k) for k in range(6)]
     rows = [describe(s) for s in chain]
-    for near, far in zip(rows, rows[1:], strict=False):
+    for near, far in pairwise(rows):
         assert all(near[n] >= far[n] for n in lowers)
     one, two, three = (describe(s) for s in ("OC(=O)CCl", "OC(=O)C(Cl)Cl", "OC(=O)C(Cl)(Cl)Cl"))
     for n in lowers:

@@ -14,7 +14,7 @@ from rdkit import Chem
 from qsar.descriptors import COLUMNS, EFFECTS, LOWERS, NAMES
 from qsar.ionisation import edge_descriptors
 from qsar.paths import reference_table
-from qsar.structures import acid_from_mol, read_acid
+from qsar.structures import Acid, acid_from_mol, read_acid
 from qsar.table import read_table
 
 
@@ -64,7 +64,10 @@ def test_no_two_columns_are_the_same_over_the_measured_acids(measured: tuple[lis
     x = measured[1]
     varying = np.flatnonzero(x.std(axis=0) > 0)
     twins = [
-        (NAMES[a], NAMES[b]) for i, a in enumerate(varying) for b in varying[i + 1 :] if np.array_equal(x[:, a], x[:, b])
+        (NAMES[a], NAMES[b])
+        for i, a in enumerate(varying)
+        for b in varying[i + 1 :]
+        if np.array_equal(x[:, a], x[:, b])
     ]
     assert twins == []
 
@@ -88,6 +91,30 @@ def test_the_order_of_atoms_changes_no_bit(smiles: str, seed: int) -> None:
     random.Random(seed).shuffle(order)
     shuffled = acid_from_mol(Chem.RenumberAtoms(mol, order))
     assert np.array_equal(edge_descriptors(shuffled), edge_descriptors(read_acid(smiles)))
+
+
+@pytest.mark.parametrize(
+    "smiles",
+    [
+        *SOME,
+        "Cc1cc(C(=O)O)ccc1C(=O)O",  # between the groups two paths of equal length, one of them substituted
+        "OC(=O)C1CCC(C(=O)O)C(C)C1",
+        "OC(=O)c1ccc(C(=O)O)c(C(=O)O)c1",
+        "CC1(C)SC2C(NC(=O)C(C(=O)O)c3ccsc3)C(=O)N2C1C(=O)O",
+    ],
+)
+def test_descriptors_see_the_molecule_and_not_its_numbering(smiles: str) -> None:
+    # The numbers are canonical, but those of a mirror image, or of the other end of a molecule, are others.
+    acid = read_acid(smiles)
+    expected = edge_descriptors(acid)
+    for seed in range(4):
+        order = list(range(acid.mol.GetNumAtoms()))
+        random.Random(seed).shuffle(order)
+        place = {old: new for new, old in enumerate(order)}
+        renumbered = Acid(acid.smiles, Chem.RenumberAtoms(acid.mol, order), tuple(place[s] for s in acid.sites))
+        found = edge_descriptors(renumbered)
+        moved = {NAMES[j] for j in np.argwhere(np.abs(found - expected) > 1e-9)[:, 1]}
+        assert moved == set()
 
 
 @pytest.mark.parametrize("smiles", [s for s in SOME if "@" in s] + ["OC(=O)[C@H]1CC[C@@H]1C(=O)O", "C[C@H](N)C(=O)O"])

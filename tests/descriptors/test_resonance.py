@@ -38,15 +38,23 @@ CASES: list[tuple[str, dict[str, float]]] = [
     (
         "OC(=O)/C=C\\Cl",
         {
-            "beta_cis_sigma_i": 0.47, "beta_cis_sigma_r": -0.22, "beta_cis_bulk": 0.55,
-            "beta_trans_sigma_i": 0, "beta_trans_sigma_r": 0, "beta_trans_bulk": 0,
+            "beta_cis_sigma_i": 0.47,
+            "beta_cis_sigma_r": -0.22,
+            "beta_cis_bulk": 0.55,
+            "beta_trans_sigma_i": 0,
+            "beta_trans_sigma_r": 0,
+            "beta_trans_bulk": 0,
         },
     ),
     (
         "OC(=O)/C=C/Cl",
         {
-            "beta_trans_sigma_i": 0.47, "beta_trans_sigma_r": -0.22, "beta_trans_bulk": 0.55,
-            "beta_cis_sigma_i": 0, "beta_cis_sigma_r": 0, "beta_cis_bulk": 0,
+            "beta_trans_sigma_i": 0.47,
+            "beta_trans_sigma_r": -0.22,
+            "beta_trans_bulk": 0.55,
+            "beta_cis_sigma_i": 0,
+            "beta_cis_sigma_r": 0,
+            "beta_cis_bulk": 0,
         },
     ),
     # configuration not stated: half on each side

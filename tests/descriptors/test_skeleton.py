@@ -13,7 +13,17 @@ from descriptors.worked import check, not_worked
 CASES: list[tuple[str, dict[str, float]]] = [
     ("OC=O", {"formic": 1, "alpha_hydrogens": 0, "longest": 0}),
     # acetic acid: one atom besides the carboxyl group, ln(1 + 1)
-    ("CC(=O)O", {"formic": 0, "alpha_hydrogens": 3, "alpha_carbons": 0, "log_atoms": log(2), "longest": 1, "saturated_carbons": 1}),
+    (
+        "CC(=O)O",
+        {
+            "formic": 0,
+            "alpha_hydrogens": 3,
+            "alpha_carbons": 0,
+            "log_atoms": log(2),
+            "longest": 1,
+            "saturated_carbons": 1,
+        },
+    ),
     ("CC(C)(C)C(=O)O", {"alpha_hydrogens": 0, "alpha_carbons": 3, "alpha_quaternary": 1, "beta_carbons": 3}),
     ("C=CC(=O)O", {"alpha_unsaturated": 1, "alpha_hydrogens": 1, "saturated_carbons": 0}),
     ("COCC(=O)O", {"alpha_hetero": 1, "alpha_carbons": 0, "alpha_unsaturated": 0}),
@@ -21,8 +31,13 @@ CASES: list[tuple[str, dict[str, float]]] = [
     (
         "CC(C)CC(=O)O",
         {
-            "beta_carbons": 1, "gamma_carbons": 2, "beta_branching": 1, "alkyl_g40": 1.72, "saturated_carbons": 4,
-            "longest": 3, "log_atoms": log(5),
+            "beta_carbons": 1,
+            "gamma_carbons": 2,
+            "beta_branching": 1,
+            "alkyl_g40": 1.72,
+            "saturated_carbons": 4,
+            "longest": 3,
+            "log_atoms": log(5),
         },
     ),
     ("CCCCCC(=O)O", {"longest": 5, "beta_branching": 0}),

@@ -1,5 +1,8 @@
-"""Bulk beside the carboxyl group, in Charton's nu (J. Am. Chem. Soc. 1975, 97, 1552): methyl 0.52, ethyl 0.56,
-isopropyl 0.76, t-butyl 1.24, Cl 0.55, NO2 0.76 (from memory)."""
+"""Bulk beside the carboxyl group, in Charton's nu.
+
+J. Am. Chem. Soc. 1975, 97, 1552: methyl 0.52, ethyl 0.56, isopropyl 0.76, t-butyl 1.24, Cl 0.55, NO2 0.76 (from
+memory).
+"""
 
 from __future__ import annotations
 
@@ -11,8 +14,14 @@ CASES: list[tuple[str, dict[str, float]]] = [
     (
         "Cc1cccc([N+](=O)[O-])c1C(=O)O",
         {
-            "ortho_count": 2, "ortho_bulk": 0.52 + 0.76, "ortho_largest": 0.76, "ortho_both": 1,
-            "ortho_alkyl": 1, "ortho_nitro": 1, "ortho_halogen": 0, "ortho_fused": 0,
+            "ortho_count": 2,
+            "ortho_bulk": 0.52 + 0.76,
+            "ortho_largest": 0.76,
+            "ortho_both": 1,
+            "ortho_alkyl": 1,
+            "ortho_nitro": 1,
+            "ortho_halogen": 0,
+            "ortho_fused": 0,
         },
     ),
     ("OC(=O)c1ccccc1Cl", {"ortho_count": 1, "ortho_bulk": 0.55, "ortho_both": 0, "ortho_halogen": 1}),

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import random
+from itertools import pairwise
 from math import log10
 
 import numpy as np
@@ -27,7 +28,13 @@ def mirrored(smiles: str) -> str:
 
 
 SAME = [
-    ["C[C@H](N)C(=O)O", "C[C@@H](N)C(=O)O", "C[C@H]([NH3+])C(=O)[O-]", "C[C@H](N)C(=O)O.Cl", "C[C@@H]([NH3+])C(=O)O.[Cl-]"],
+    [
+        "C[C@H](N)C(=O)O",
+        "C[C@@H](N)C(=O)O",
+        "C[C@H]([NH3+])C(=O)[O-]",
+        "C[C@H](N)C(=O)O.Cl",
+        "C[C@@H]([NH3+])C(=O)O.[Cl-]",
+    ],
     ["NCC(=O)O", "[NH3+]CC(=O)[O-]", "[NH3+]CC(=O)O.[Cl-]", "NCC(=O)[O-].[Na+]", "[15NH3+]CC(=O)[O-]"],
     ["NCCCC[C@H](N)C(=O)O", "[NH3+]CCCC[C@H](N)C(=O)[O-]", "NCCCC[C@@H](N)C(=O)O.Cl.Cl"],
     ["N[C@@H](CC(=O)O)C(=O)O", "[NH3+][C@@H](CC(=O)[O-])C(=O)[O-].[Na+]", "N[C@H](CC(=O)O)C(=O)O"],
@@ -71,7 +78,12 @@ def test_mirror_images_agree(model: Model, smiles: str) -> None:
     assert pka(other) == pytest.approx(pka(one), abs=EXACT)
     for a, b in zip(one.steps, other.steps, strict=True):
         assert (b.low, b.high) == pytest.approx((a.low, a.high), abs=EXACT)
-        assert (b.domain, b.measured, b.pka_without, b.nearest_pka) == (a.domain, a.measured, a.pka_without, a.nearest_pka)
+        assert (b.domain, b.measured, b.pka_without, b.nearest_pka) == (
+            a.domain,
+            a.measured,
+            a.pka_without,
+            a.nearest_pka,
+        )
 
 
 @pytest.mark.parametrize("smiles", [*CHIRAL[:4], "OC(=O)CC(O)(C(=O)O)CC(=O)O", "Cc1cc(Cl)c(OCC(=O)O)cc1[N+](=O)[O-]"])
@@ -151,7 +163,9 @@ def test_symmetric_sites_are_equal_and_statistics_are_exact(model: Model) -> Non
         assert second == pytest.approx(micro[2] + log10(2), abs=EXACT)
 
 
-@pytest.mark.parametrize("smiles", ["OC(=O)CC(O)(C(=O)O)CC(=O)O", "OC(=O)CC(CC(=O)O)C(=O)O", "OC(=O)CN(CC(=O)O)CCN(CC(=O)O)CC(=O)O"])
+@pytest.mark.parametrize(
+    "smiles", ["OC(=O)CC(O)(C(=O)O)CC(=O)O", "OC(=O)CC(CC(=O)O)C(=O)O", "OC(=O)CN(CC(=O)O)CCN(CC(=O)O)CC(=O)O"]
+)
 def test_steps_follow_from_the_micro_constants(model: Model, smiles: str) -> None:
     acid = read_acid(smiles)
     n = len(acid.sites)
@@ -166,7 +180,7 @@ def test_later_protons_leave_less_easily(model: Model) -> None:
     # electrostatics and statistics both ask for it (Bjerrum 1923)
     for smiles in ("OC(=O)C(=O)O", "OC(=O)CC(=O)O", "OC(=O)CC(O)(C(=O)O)CC(=O)O", "OC(=O)c1ccccc1C(=O)O"):
         steps = pka(model.predict([smiles])[0])
-        assert all(b > a for a, b in zip(steps, steps[1:], strict=False))
+        assert all(b > a for a, b in pairwise(steps))
 
 
 REFUSED = [

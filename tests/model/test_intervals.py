@@ -43,7 +43,8 @@ def test_a_case_worked_by_hand() -> None:
     # 80 % coverage floor(3.8) = 3, the third smallest lower end, and ceil(15.2) = 16, the third largest upper end.
     residuals = np.array([0.1, 0.1, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7, 0.8])
     member = np.arange(9) % 2
-    # lower ends 3.9 4.1 3.8 3.9 3.6 3.7 3.4 3.5 3.2: 3.2 3.2 3.4; upper 4.1 4.3 4.2 4.5 4.4 4.7 4.6 4.9 4.8: 4.9 4.9 4.8
+    # lower ends 3.9 4.1 3.8 3.9 3.6 3.7 3.4 3.5 3.2: 3.2 3.2 3.4
+    # upper ends 4.1 4.3 4.2 4.5 4.4 4.7 4.6 4.9 4.8: 4.9 4.9 4.8
     low, high = calibration(residuals, member).interval(np.array([[4.0], [4.2]]), np.ones(1), np.zeros(1, int), 0.8)
     assert low[0] == pytest.approx(3.4, abs=1e-12)
     assert high[0] == pytest.approx(4.8, abs=1e-12)

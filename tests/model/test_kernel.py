@@ -93,7 +93,7 @@ def test_scaling() -> None:
     free = np.array([[1.0, 5.0, 0.0], [3.0, 5.0, 0.0], [5.0, 5.0, 300.0]])
     scaling = Scaling.of(free)
     scaled = scaling(free)
-    assert scaled[:, 0] == pytest.approx([-1.5**0.5, 0.0, 1.5**0.5])  # standard deviation sqrt(8/3)
+    assert scaled[:, 0] == pytest.approx([-(1.5**0.5), 0.0, 1.5**0.5])  # standard deviation sqrt(8/3)
     assert np.all(scaled[:, 1] == 0.0)  # constant: no information, no division by zero
     far = scaling(np.array([[1e6, 5.0, -1e9]]))
     assert np.abs(far).max() == CLIP

@@ -25,9 +25,14 @@ def library(*smiles: str) -> Library:
 
 def test_steps_of_an_acid() -> None:
     one = library("OC(=O)CC(=O)O", "CC(=O)O", "OC(=O)CC(=O)O")
-    both = Library(one.smiles, one.name, one.family, one.source, np.array([1, 1, 2]), *(
-        getattr(one, k) for k in ("pka", "uncertainty", "pka_without", "expected_error")
-    ))
+    both = Library(
+        one.smiles,
+        one.name,
+        one.family,
+        one.source,
+        np.array([1, 1, 2]),
+        *(getattr(one, k) for k in ("pka", "uncertainty", "pka_without", "expected_error")),
+    )
     assert both.rows_of(Chem.CanonSmiles("OC(=O)CC(=O)O")) == {1: 0, 2: 2}
     assert both.rows_of(Chem.CanonSmiles("CC(=O)O")) == {1: 1}
     assert both.rows_of("CCC(=O)O") == {}

@@ -74,9 +74,7 @@ def test_names_that_lead_out_of_the_folder_are_refused(registry: Registry, name:
         registry.add(small_model(), name)
 
 
-def test_a_damaged_bundle_is_listed_and_breaks_no_other(
-    registry: Registry, capsys: pytest.CaptureFixture[str]
-) -> None:
+def test_a_damaged_bundle_is_listed_and_breaks_no_other(registry: Registry, capsys: pytest.CaptureFixture[str]) -> None:
     registry.add(small_model(), "good")
     for name, card in (("bad", "{"), ("foreign", "[]")):
         (registry.folder / name).mkdir()
@@ -163,9 +161,6 @@ def test_the_card_of_a_stranger_cannot_steer_the_terminal(
 
 
 def test_loading_a_model_imports_no_training_library(shipped_model: Path) -> None:
-    code = (
-        "import sys, qsar.model; "
-        "assert not {'sklearn', 'pandas', 'scipy'} & set(sys.modules), sorted(sys.modules)"
-    )
+    code = "import sys, qsar.model; assert not {'sklearn', 'pandas', 'scipy'} & set(sys.modules), sorted(sys.modules)"
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=False)
     assert done.returncode == 0, done.stderr

@@ -1,0 +1,181 @@
+"""Splits, fits and studies on a small table."""
+
+from __future__ import annotations
+
+from functools import cache
+from pathlib import Path
+
+import numpy as np
+import pytest
+from small_models import QUICK, small_model
+
+from qsar.structures import read_acid
+from qsar.validation import fits, splits, studies
+from qsar.validation.cache import Cache
+from qsar.validation.fits import Fit, Problem, problem_of, run
+from qsar.validation.forest import count_fingerprints
+from qsar.validation.judged import AMINO, FIRST, HIGHER, MONOBASIC, SECOND, family_of, judge, library_steps
+from qsar.validation.lines import line_predictions
+from qsar.validation.open_rows import as_text
+
+SMALL = studies.Scale(1, 3, "trend", (0.5, 1.0), 1, 2, 1)
+
+
+@cache
+def problem() -> Problem:
+    return problem_of(small_model().library, QUICK)
+
+
+def test_folds_keep_the_steps_of_an_acid_together() -> None:
+    data = problem().data
+    fold = splits.folds_of_acids(data, 4, 7)
+    assert all(len(set(fold[data.step_acid == a])) == 1 for a in range(len(data.acids)))
+    sizes = np.bincount([fold[data.step_acid == a][0] for a in range(len(data.acids))])
+    assert sizes.max() - sizes.min() <= 1
+
+
+def test_groups_left_out_take_whole_acids() -> None:
+    data = problem().data
+    groups = {**splits.families(data), **splits.substituents(data)}
+    assert len(groups) > 10
+    for own in groups.values():
+        assert 0 < own.sum() < len(own)
+        assert not set(data.step_acid[own]) & set(data.step_acid[~own])
+
+
+def test_a_substituent_left_out_is_nowhere_in_training() -> None:
+    data = problem().data
+    own = splits.substituents(data)["chloro"]
+    left = [data.acids[a].mol for a in set(data.step_acid[~own])]
+    assert not any(atom.GetSymbol() == "Cl" for mol in left for atom in mol.GetAtoms())
+
+
+def test_every_learner_answers_for_every_step_and_beats_nothing_but_itself() -> None:
+    data = problem().data
+    train = splits.folds_of_acids(data, 3, 1) != 0
+    error = {}
+    for learner in fits.LEARNERS:
+        found = fits.predictions(problem(), Fit("x", learner, train))
+        assert found.shape == data.pka.shape
+        assert np.all(np.isfinite(found))
+        error[learner] = np.abs(found - data.pka)[~train].mean()
+    assert error["member"] < error["mean"]
+    assert error["trend"] < error["mean"]
+    assert error["lines"] < error["mean"]
+
+
+def test_held_out_values_are_not_seen() -> None:
+    data = problem().data
+    train = splits.folds_of_acids(data, 3, 1) != 0
+    moved = np.where(train, data.pka, 9.0)
+    for learner in ("trend", "forest", "lines", "mean"):
+        as_is = fits.predictions(problem(), Fit("a", learner, train))
+        other = fits.predictions(problem(), Fit("b", learner, train, moved))
+        assert np.array_equal(as_is, other), learner
+
+
+def test_plain_lines_are_numpys() -> None:
+    """Chloroacetic to acetic acid on the Taft line by hand: two points define it, the third is read from it."""
+    acids = [read_acid(s) for s in ("CC(=O)O", "OC(=O)CCl", "OC(=O)C(Cl)Cl", "CCC(=O)O")]
+    pka = np.array([4.76, 2.87, 1.30, 4.87])
+    train = np.array([True, True, True, False])
+    slope, offset = np.polyfit([0.0, 1.05, 1.94], pka[:3], 1)
+    found = line_predictions(acids, np.ones(4, dtype=int), pka, train)
+    assert found[3] == pytest.approx(offset - 0.10 * slope, abs=1e-12)
+
+
+def test_count_fingerprints_count() -> None:
+    """Hexanoic acid has the environments of pentanoic acid once more each, or as often."""
+    short, long = count_fingerprints([read_acid("CCCCC(=O)O"), read_acid("CCCCCC(=O)O")], np.array([1, 1]))
+    assert np.all(long >= short)
+    assert long[:-2].sum() > short[:-2].sum()
+
+
+def test_an_interrupted_run_goes_on(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    wanted = studies.cross_validation_fits(problem().data, SMALL)
+    wanted = [fit for fit in wanted if fit.learner in ("lines", "mean", "trend")]
+    cache_ = Cache(tmp_path / "cache")
+    seen: list[int] = []
+
+    def stop(done: int) -> None:
+        seen.append(done)
+        if len(seen) == 4:
+            raise KeyboardInterrupt
+
+    with pytest.raises(KeyboardInterrupt):
+        run(problem(), wanted, cache_, 1, stop)
+    made: list[str] = []
+    real = fits.predictions
+    monkeypatch.setattr(fits, "predictions", lambda p, f: made.append(f.name) or real(p, f))
+    found = run(problem(), wanted, cache_)
+    assert set(found) == {fit.name for fit in wanted}
+    assert len(made) == len(wanted) - 4
+    monkeypatch.undo()
+    fresh = run(problem(), wanted)
+    assert all(np.array_equal(found[name], fresh[name]) for name in fresh)
+
+
+def test_a_damaged_part_is_made_again(tmp_path: Path) -> None:
+    cache_ = Cache(tmp_path)
+    cache_.put("part", np.arange(3.0))
+    assert np.array_equal(cache_.get("part", 3), np.arange(3.0))
+    assert cache_.get("part", 4) is None
+    cache_.path("part").write_bytes(b"\x93NUMPY")
+    assert cache_.get("part", 3) is None
+
+
+def test_processes_do_not_change_the_numbers() -> None:
+    wanted = [f for f in studies.cross_validation_fits(problem().data, SMALL) if f.learner in ("trend", "forest")]
+    one, two = run(problem(), wanted), run(problem(), wanted, None, 2)
+    assert all(np.array_equal(one[name], two[name]) for name in one)
+
+
+def test_studies_on_a_small_table() -> None:
+    data = problem().data
+    results = run(problem(), studies.all_fits(problem(), SMALL))
+    rows = studies.left_out(data, SMALL, results, "family")
+    assert sum(r.out.n for r in rows) <= len(data.pka)
+    assert all(r.forest is not None for r in rows)
+    points = studies.learning_curve(data, SMALL, results)
+    assert points[0].acids < points[1].acids
+    measured, dealt = studies.randomisation(data, SMALL, results)
+    assert measured.correlation == pytest.approx(1.0)
+    assert max(p.r2 for p in dealt) < 0.2 < measured.r2
+    robust = studies.robustness(data, SMALL, results)
+    assert 0 < robust.moved < 0.2
+    assert robust.uncertainty == pytest.approx(data.uncertainty.mean())
+
+
+def test_permuting_keeps_the_values() -> None:
+    values = np.arange(20.0)
+    assert sorted(studies.permuted(values, 1)) == sorted(values)
+    assert not np.array_equal(studies.permuted(values, 1), values)
+
+
+@pytest.mark.parametrize(
+    ("smiles", "step", "family"),
+    [
+        ("CC(=O)O", 1, MONOBASIC),
+        ("OC(=O)CC(=O)O", 1, FIRST),
+        ("OC(=O)CC(=O)O", 2, SECOND),
+        ("NCC(=O)O", 1, AMINO),
+        ("NC(CC(=O)O)C(=O)O", 2, AMINO),
+        ("OC(=O)CC(O)(C(=O)O)CC(=O)O", 3, HIGHER),
+        ("CC(=O)NCC(=O)O", 1, MONOBASIC),
+    ],
+)
+def test_family(smiles: str, step: int, family: str) -> None:
+    assert family_of(read_acid(smiles), step) == family
+
+
+def test_the_table_judged_by_itself() -> None:
+    model = small_model()
+    judged = judge(model, library_steps(model.library))
+    everything = np.ones(len(judged.measured), dtype=bool)
+    assert judged.trained_on.all()
+    assert judged.errors(everything).n == len(model.library.pka)
+    assert np.all(np.diff(judged.high - judged.low, axis=0) >= -1e-9)  # a higher level is never narrower
+    text = as_text(judged)
+    assert f"{len(judged.measured)} measured steps" in text
+    for name in (MONOBASIC, FIRST, SECOND, AMINO):
+        assert name in text
