@@ -85,8 +85,9 @@ def _without(acid: Acid, atoms: set[int]) -> Chem.Mol:
             mol.RemoveAtom(a)
         mol.CommitBatchEdit()
         Chem.SanitizeMol(mol)
+        Chem.AssignStereochemistry(mol, cleanIt=True, force=True)  # centres that are none any more
         _restore(mol, stereo)
-        Chem.AssignStereochemistry(mol, cleanIt=True, force=True)
+        Chem.AssignStereochemistry(mol, cleanIt=False, force=True)
     return mol
 
 

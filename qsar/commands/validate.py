@@ -84,7 +84,7 @@ def _with_open_rows(model: Model, args: argparse.Namespace) -> int:
 
     steps = read_iupac(find_open_file(args.open_data))
     with progress(lambda: model.members.settings.folds, "folds", wanted=True) as done:
-        richer = train_with(model, steps, done)
+        richer = train_with(model, steps, done, args.jobs)
     sections = compare(model, richer, steps)
     title = "What the open rows add to training"
     opening = (

@@ -131,28 +131,28 @@ class Domain:
             n = self.counts.get(feature, 0)
             if feature[0] == "group" and n == 0:
                 level = max(level, 2)
-                reasons.append(f"no measured acid has a {label(feature[1])} group; {away}")
+                reasons.append(f"no measured acid has a {label(feature[1])} group – {away}")
             elif feature[0] == "site" and n == 0:
                 level = max(level, 2)
-                reasons.append(f"no measured acid has its COOH on {feature[1]}; {away}")
+                reasons.append(f"no measured acid has its COOH on {feature[1]} – {away}")
             elif feature[0] == "site" and n <= _FEW:
                 level = max(level, 1)
                 reasons.append(f"only {_number(n)} a COOH on {feature[1]}")
             elif feature[0] == "place" and n == 0 and self.counts.get(("group", feature[1]), 0):
                 level = max(level, 1)
-                reasons.append(f"no measured acid has a {label(feature[1])} group {place(feature)}; {away}")
+                reasons.append(f"no measured acid has a {label(feature[1])} group {place(feature)} – {away}")
         basic = basic_nitrogen(view)
         if basic:
             level = 2
             reasons.append(basic)
         if expected > self.outside_above:
             level = 2
-            reasons.append(f"expected error {expected:.2f}, larger than for 92 % of the measured acids; {away}")
+            reasons.append(f"expected error {expected:.2f}, larger than for 92 % of the measured acids – {away}")
         elif expected > self.borderline_above:
             level = max(level, 1)
-            reasons.append(f"expected error {expected:.2f}, larger than for 72 % of the measured acids; {away}")
+            reasons.append(f"expected error {expected:.2f}, larger than for 72 % of the measured acids – {away}")
         if level == 0:
-            reasons.append(f"close to measured acids; {away}")
+            reasons.append(f"close to measured acids – {away}")
         return VERDICTS[level], reasons
 
 

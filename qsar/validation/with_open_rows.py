@@ -41,7 +41,12 @@ def open_measurements(model: Model, steps: Sequence[GradedStep]) -> list[Measure
     return added
 
 
-def train_with(model: Model, steps: Sequence[GradedStep], done: Callable[[int], object] = lambda _: None) -> Model:
+def train_with(
+    model: Model,
+    steps: Sequence[GradedStep],
+    done: Callable[[int], object] = lambda _: None,
+    jobs: int = 1,
+) -> Model:
     """Train with the model's settings on its table and the open steps that it does not hold.
 
     Returns
@@ -69,6 +74,7 @@ def train_with(model: Model, steps: Sequence[GradedStep], done: Callable[[int], 
         model.members.settings,
         provenance={"licence": "trained on rows under CC BY-NC 4.0"},
         done=done,
+        jobs=jobs,
     )
 
 

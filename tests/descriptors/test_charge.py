@@ -68,6 +68,22 @@ NEUTRAL: list[tuple[str, dict[str, float]]] = [
     # cis- and trans-cyclobutane-1,2-dicarboxylic acid: (1R,2S) is cis, (1R,2R) trans
     ("OC(=O)[C@H]1CC[C@H]1C(=O)O", {"carboxyl_cis": 1}),
     ("OC(=O)[C@H]1CC[C@@H]1C(=O)O", {"carboxyl_cis": -1}),
+    # the same on small rings: 1 on a three-membered, 1/2 on a four-membered one
+    ("OC(=O)[C@H]1CC[C@H]1C(=O)O", {"cis_small_ring": 0.5, "cis_small_ring_anion": 0}),
+    ("OC(=O)[C@H]1C[C@@H]1C(=O)O", {"cis_small_ring": -1}),
+    # carbons on the ammonium nitrogen besides the one that leads to the acid: N,N-dimethylglycine 2, betaine 3; one
+    # bond further half as much
+    ("CN(C)CC(=O)O", {"cation_substituents": 2, "cation_delocalised": 0}),
+    ("C[N+](C)(C)CC(=O)O", {"cation_substituents": 3}),
+    ("CN(C)CCC(=O)O", {"cation_substituents": 1}),
+    # guanidinoacetic and 3-guanidinopropanoic acid: a delocalised cation
+    ("NC(=N)NCC(=O)O", {"cation_delocalised": 1, "cation_substituents": 0}),
+    ("NC(=N)NCCC(=O)O", {"cation_delocalised": 0.5}),
+    # succinic acids: methyl counts 1, ethyl 1.5; the product of both ends
+    ("OC(=O)CC(C)C(=O)O", {"vicinal_crowd": 0}),
+    ("OC(=O)C(C)C(C)C(=O)O", {"vicinal_crowd": 1, "vicinal_crowd_anion": 0}),
+    ("OC(=O)C(C)(C)C(C)(C)C(=O)O", {"vicinal_crowd": 4}),
+    ("OC(=O)C(CC)C(CC)C(=O)O", {"vicinal_crowd": 2.25}),
     # dimethyl- and diethylmalonic acid: two alkyl groups (1) and half a point for each carbon that branches further
     ("OC(=O)C(C)(C)C(=O)O", {"geminal_bulk": 1, "geminal_bulk_anion": 0}),
     ("OC(=O)C(CC)(CC)C(=O)O", {"geminal_bulk": 2, "geminal_small_ring": 0}),
@@ -106,6 +122,8 @@ IONISED: list[tuple[str, dict[str, float]]] = [
     ("OC(=O)/C=C/C(=O)O", {"anion_cis": -1}),
     ("OC(=O)/C=C\\C(=O)O", {"anion_cis": 1, "carboxyl_cis": 1}),
     ("OC(=O)C(CC)(CC)C(=O)O", {"geminal_bulk": 0, "geminal_bulk_anion": 2}),
+    ("OC(=O)[C@H]1CC[C@H]1C(=O)O", {"cis_small_ring": 0, "cis_small_ring_anion": 0.5}),
+    ("OC(=O)C(C)C(C)C(=O)O", {"vicinal_crowd": 0, "vicinal_crowd_anion": 1}),
     ("OC(=O)C1(CC1)C(=O)O", {"geminal_small_ring": 0, "geminal_small_ring_anion": 1}),
     ("OC(=O)C1=C(CC1)C(=O)O", {"vicinal_splay": 0, "vicinal_splay_anion": 2}),
 ]

@@ -19,6 +19,9 @@ NEUTRAL: list[tuple[str, dict[str, float]]] = [
     ("Oc1cccc(C(=O)O)c1", {"oh_ring6": 0, "oh_ring7": 1, "oh_ring6_rigid": 0, "oh_ring7_rigid": 0}),
     ("Oc1ccc(C(=O)O)cc1", {"oh_ring5": 0, "oh_ring6": 0, "oh_ring7": 0}),
     ("Oc1cccc(O)c1C(=O)O", {"oh_ring6": 2, "oh_ring6_rigid": 2, "oh_ortho_pair": 1}),
+    # 6-methylsalicylic acid: the second ortho group presses the COOH towards the OH
+    ("Cc1cccc(O)c1C(=O)O", {"oh_ortho_buttressed": 1, "oh_ortho_pair": 0, "oh_ring6_rigid": 1}),
+    ("Cc1ccc(C(=O)O)c(O)c1", {"oh_ortho_buttressed": 0, "oh_ring6_rigid": 1}),
     # 2-(hydroxyamino)benzoic acid: N closes a ring of six, O one of seven, both held in place by the ring
     ("ONc1ccccc1C(=O)O", {"oh_ring7": 1, "oh_ring7_rigid": 1, "nh_ring6": 1, "nh_ring6_rigid": 1}),
     # glycine, beta-alanine, 4-aminobutanoic acid; anthranilic acid

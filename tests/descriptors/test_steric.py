@@ -25,6 +25,10 @@ CASES: list[tuple[str, dict[str, float]]] = [
         },
     ),
     ("OC(=O)c1ccccc1Cl", {"ortho_count": 1, "ortho_bulk": 0.55, "ortho_both": 0, "ortho_halogen": 1}),
+    # two ortho groups: the sum of their sigma_I, 2 * 0.47 and -0.01 + 0.65; one alone does not count
+    ("OC(=O)c1c(Cl)cccc1Cl", {"ortho_pair_sigma": 0.94, "ortho_both": 1}),
+    ("Cc1cccc([N+](=O)[O-])c1C(=O)O", {"ortho_pair_sigma": 0.64}),
+    ("OC(=O)c1ccccc1[N+](=O)[O-]", {"ortho_pair_sigma": 0}),
     ("OC(=O)c1ccccc1C(C)(C)C", {"ortho_bulk": 1.24, "ortho_alkyl": 1}),
     ("OC(=O)c1ccccc1OC", {"ortho_ether": 1}),
     ("OC(=O)c1ccccc1C(C)=O", {"ortho_carbonyl": 1}),

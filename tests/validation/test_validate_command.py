@@ -10,20 +10,19 @@ import pytest
 from small_models import small_model
 
 from qsar.cli import main
-from qsar.curation.iupac import read_iupac
+from qsar.curation.iupac import COLUMNS, read_iupac
 from qsar.model import save
 from qsar.validation import studies
 from qsar.validation.judged import judge
 from qsar.validation.with_open_rows import compare, open_measurements, train_with
 
-#: Invented values under the header of the IUPAC Digitized pKa Dataset.
-HEADER = "SMILES,pka_type,pka_value,T,remarks,assessment,pressure,cosolvent"
-INVENTED = f"""{HEADER}
-CCCCCCCC(F)C(=O)O,pKa1,2.61,25,,Reliable,,
-OC(=O)CCCCCCCCCCC(=O)O,pKa1,4.55,25,,Approximate,,
-OC(=O)CCCCCCCCCCC(=O)O,pKa2,5.45,25,,Approximate,,
-CC(=O)O,pKa1,4.75,25,,Reliable,,
-"""
+#: Invented values, written under the header of the IUPAC Digitized pKa Dataset.
+INVENTED = (
+    ("CCCCCCCC(F)C(=O)O", "pKa1", "2.61", "Reliable"),
+    ("OC(=O)CCCCCCCCCCC(=O)O", "pKa1", "4.55", "Approximate"),
+    ("OC(=O)CCCCCCCCCCC(=O)O", "pKa2", "5.45", "Approximate"),
+    ("CC(=O)O", "pKa1", "4.75", "Reliable"),
+)
 
 
 @pytest.fixture(scope="module")
@@ -37,7 +36,11 @@ def bundle(tmp_path_factory: pytest.TempPathFactory) -> Path:
 def invented(tmp_path: Path) -> Path:
     folder = tmp_path / "open"
     folder.mkdir()
-    (folder / "rows.csv").write_text(INVENTED, encoding="utf-8")
+    with (folder / "rows.csv").open("w", encoding="utf-8", newline="") as handle:
+        writer = csv.DictWriter(handle, COLUMNS, restval="")
+        writer.writeheader()
+        for smiles, label, value, grade in INVENTED:
+            writer.writerow({"SMILES": smiles, "pka_type": label, "pka_value": value, "T": "25", "assessment": grade})
     return folder
 
 
