@@ -195,7 +195,8 @@ def test_double_bond_keeps_its_configuration_only_while_both_ends_have_a_substit
     parts = decompose(acid, acid.sites[0])
     place = {s.name: k for k, s in enumerate(parts.substituents)}
     without_methyl = hypothetical(acid, parts, frozenset(), [place["chloro"], place["bromo"]]).smiles
-    assert without_methyl == Chem.CanonSmiles("OC(=O)/C(Cl)=C/Br")
+    # methyl is trans to COOH as drawn, so bromine is cis to it
+    assert without_methyl == Chem.CanonSmiles(r"OC(=O)/C(Cl)=C\Br")
     only_chlorine = hypothetical(acid, parts, frozenset(), [place["chloro"]]).smiles
     assert only_chlorine == Chem.CanonSmiles("OC(=O)C(Cl)=C")
 

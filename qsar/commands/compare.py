@@ -43,6 +43,9 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         "--refuse-leakage", action="store_true", help="stop where a row of --data is in a training table"
     )
     parser.add_argument(
+        "--keep-suspected", action="store_true", help="use also rows that `acidity curate` suspects of an artefact"
+    )
+    parser.add_argument(
         "--source", metavar="NAME", help="use only rows of this source, such as in-house (column source)"
     )
     parser.add_argument(
@@ -102,9 +105,13 @@ def _held_out(args: argparse.Namespace, a: Model, b: Model) -> list[Pair]:
 
 
 def _rows(args: argparse.Namespace, a: Model, b: Model) -> list[Measurement]:
+    from qsar.commands.train import leaving_out
     from qsar.model.user_table import read_date, read_user_table
 
     table = read_user_table(args.data)
+    if table.suspects and not args.keep_suspected:
+        say(f"acidity: {leaving_out(table.suspects)}; --keep-suspected counts them")
+        table = table.sound()
     if args.by_date is not None:
         stated = args.by_date or max(str(m.card.get("newest_measurement") or "") for m in (a, b))
         if not stated:

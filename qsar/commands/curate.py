@@ -169,7 +169,11 @@ def _report(source: Path, output: Path, left: Path, questions: Path, curated: Cu
     print(f"{curated.balance}")
     print(f"{output}: {len(curated.kept)} steps to train on; {changed} of them changed or corrected, see {left}")
     if flags:
-        print(f"{questions}: {len(flags)} rows far from what the model expects; flagged, not changed")
+        suspect = sum(bool(f.artefact) for f in flags)
+        print(
+            f"{questions}: {len(flags)} rows far from what the model expects, flagged and not changed; an artefact is "
+            f"the likeliest cause for {suspect} of them (column suspected), which `acidity train` leaves out"
+        )
 
 
 def _run_iupac(args: argparse.Namespace, output: Path) -> int:

@@ -39,6 +39,11 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         help="take the systematic offset between --data and the reference table off the rows of --data; without "
         "this it is reported only",
     )
+    parser.add_argument(
+        "--keep-suspected",
+        action="store_true",
+        help="train also on rows that `acidity curate` suspects of an artefact (column suspected)",
+    )
     parser.add_argument("--name", metavar="NAME", help="name of the model (default: by the table)")
     parser.add_argument(
         "-o",
@@ -100,7 +105,7 @@ def run(args: argparse.Namespace) -> int:
 
 
 def _check(args: argparse.Namespace) -> None:
-    for option in ("only", "until", "correct_offset"):
+    for option in ("only", "until", "correct_offset", "keep_suspected"):
         if getattr(args, option) and not args.data:
             raise UserError(f"--{option.replace('_', '-')} needs --data FILE")
     if args.only and args.correct_offset:
@@ -137,6 +142,11 @@ def _own(args: argparse.Namespace) -> UserTable:
     from qsar.model.user_table import read_date, read_user_table
 
     table = read_user_table(args.data)
+    if table.suspects and not args.keep_suspected:
+        say(f"acidity: {leaving_out(table.suspects)}; --keep-suspected trains on them")
+        table = table.sound()
+    if not table.measurements:
+        raise UserError(f"{args.data}: every row is suspected of an artefact; see its column flag")
     if not args.until:
         return table
     last = read_date(args.until, "--until")
@@ -145,6 +155,13 @@ def _own(args: argparse.Namespace) -> UserTable:
     if not early.measurements:
         raise UserError(f"--until {args.until}: no row of {args.data} is dated up to that day (column date)")
     return early
+
+
+def leaving_out(suspects: list[str], shown: int = 5) -> str:
+    """What is said of rows that the curation suspects."""
+    more = f" and {len(suspects) - shown} more" if len(suspects) > shown else ""
+    count = f"{len(suspects)} row" + ("" if len(suspects) == 1 else "s")
+    return f"{count} suspected of an artefact left out: {', '.join(suspects[:shown])}{more}"
 
 
 def _described(path: Path, measurements: list[Measurement]) -> dict[str, Any]:

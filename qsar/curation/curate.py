@@ -29,6 +29,7 @@ CLEAN_COLUMNS = (
     "date",
     "rows",
     "pka_before_correction",
+    "suspected",
     "flag",
 )
 LEFT_COLUMNS = ("row", "outcome", "reason", "other_rows")
@@ -114,12 +115,14 @@ def curate(rows: Sequence[RawRow], defaults: Defaults, limit: float = LIMIT) -> 
 def write_clean(path: Path, curated: Curated, flags: Sequence[Flag] = ()) -> None:
     """Write the table to train on; see `CLEAN_COLUMNS`.
 
-    Constants are thermodynamic, at ionic strength 0. ``rows`` are the rows of the source that went in.
+    Constants are thermodynamic, at ionic strength 0. ``rows`` are the rows of the source that went in; ``suspected`` is
+    the artefact that most likely lies behind a value, empty where none is likelier than a sound value.
     """
-    flagged = {f.merged.rows: f.sentence for f in flags}
+    flagged = {f.merged.rows: f for f in flags}
 
     def line(m: Merged) -> list[object]:
         r = m.row
+        flag = flagged.get(m.rows)
         temperature = 25.0 if r.temperature_c is None else r.temperature_c
         return [
             r.name,
@@ -135,7 +138,8 @@ def write_clean(path: Path, curated: Curated, flags: Sequence[Flag] = ()) -> Non
             r.date,
             _numbers(m.rows),
             f"{r.measured:.4f}",
-            flagged.get(m.rows, ""),
+            flag.artefact if flag else "",
+            flag.sentence if flag else "",
         ]
 
     write_csv(path, CLEAN_COLUMNS, (line(m) for m in curated.kept))

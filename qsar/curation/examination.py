@@ -16,7 +16,7 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-from qsar.curation.artefacts import Case, Suspicion, suspicions
+from qsar.curation.artefacts import NO_FAULT, Case, Suspicion, suspicions
 from qsar.curation.duplicates import Merged
 
 if TYPE_CHECKING:
@@ -59,6 +59,12 @@ class Flag:
     high: float
     domain: str
     explanations: tuple[Explanation, ...]
+
+    @property
+    def artefact(self) -> str:
+        """The most likely artefact; empty where none is likelier than a sound value that the model misjudges."""
+        kind = self.explanations[0].suspicion.kind
+        return "" if kind == NO_FAULT else kind
 
     @property
     def sentence(self) -> str:

@@ -24,15 +24,31 @@ class UserTable:
     measurements : list of Measurement
     dates : list of date or None
         None where the row states none.
+    suspected : list of str
+        The artefact that the curation holds for likely, empty where it holds none.
     """
 
     measurements: list[Measurement]
     dates: list[date | None]
+    suspected: list[str]
 
     @property
     def newest(self) -> date | None:
         """Day of the last measurement, None where no row states one."""
         return max((d for d in self.dates if d is not None), default=None)
+
+    @property
+    def suspects(self) -> list[str]:
+        """One line for each row that is suspected."""
+        return [
+            f"{m.name or m.acid.smiles} {m.pka:.2f} ({s})"
+            for m, s in zip(self.measurements, self.suspected, strict=True)
+            if s
+        ]
+
+    def sound(self) -> UserTable:
+        """The rows that are not suspected."""
+        return self._some([not s for s in self.suspected])
 
     def until(self, last: date) -> UserTable:
         """The rows measured up to a day; those without a date are left out."""
@@ -44,11 +60,13 @@ class UserTable:
 
     def _some(self, wanted: Sequence[bool]) -> UserTable:
         kept = [i for i, w in enumerate(wanted) if w]
-        return UserTable([self.measurements[i] for i in kept], [self.dates[i] for i in kept])
+        return UserTable(
+            [self.measurements[i] for i in kept], [self.dates[i] for i in kept], [self.suspected[i] for i in kept]
+        )
 
 
 def read_user_table(path: Path) -> UserTable:
-    """Read a clean table (see ``acidity curate``) with its optional column ``date``.
+    """Read a clean table (see ``acidity curate``) with its optional columns ``date`` and ``suspected``.
 
     Raises
     ------
@@ -61,9 +79,12 @@ def read_user_table(path: Path) -> UserTable:
         raise UserError(f"{problem}; `acidity curate {path.name}` makes a clean table") from problem
     with path.open(encoding="utf-8-sig", newline="") as handle:
         reader = csv.DictReader(handle)
-        dates = [read_date(row.get("date") or "", f"{path.name}, row {reader.line_num}, column date") for row in reader]
+        dates, suspected = [], []
+        for row in reader:
+            dates.append(read_date(row.get("date") or "", f"{path.name}, row {reader.line_num}, column date"))
+            suspected.append((row.get("suspected") or "").strip())
     measurements = [replace(m, source=m.source or "in-house") for m in measurements]
-    return UserTable(measurements, dates)
+    return UserTable(measurements, dates, suspected)
 
 
 def read_date(text: str, where: str) -> date | None:

@@ -75,7 +75,7 @@ def _coverage_lines(judged: Judged) -> list[str]:
     inside = judged.verdict == VERDICTS[0]
     order = np.argsort(judged.expected, kind="stable")
     by_width = np.argsort(width, kind="stable")
-    third = len(order) // 3
+    third = max(len(order) // 3, 1)
     lines += [
         f"median 90 % width inside the domain: {np.median(width[inside]):.2f} (n {int(inside.sum())}); "
         f"all: {np.median(width):.2f}",

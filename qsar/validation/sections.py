@@ -69,7 +69,7 @@ def intervals(judged: Judged) -> Section:
             width = float(np.median(judged.width(level)[flags])) if flags.any() else float("nan")
             rows.append((f"{name}, {100 * level:.0f} %", c.n, c.share, c.low, c.high, width))
     error, order = np.abs(judged.error), np.argsort(judged.width(0.9), kind="stable")
-    third = len(order) // 3
+    third = max(len(order) // 3, 1)
     thirds = [
         ("narrowest third of the 90 % intervals", third, float(error[order[:third]].mean())),
         ("widest third", third, float(error[order[-third:]].mean())),

@@ -62,9 +62,7 @@ EXPECTED = [
 
 
 @pytest.mark.parametrize(("smiles", "name", "share"), EXPECTED)
-def test_shares_of_chlorine_are_those_the_trade_expects(
-    model: Model, smiles: str, name: str, share: float
-) -> None:
+def test_shares_of_chlorine_are_those_the_trade_expects(model: Model, smiles: str, name: str, share: float) -> None:
     lines = groups(only(model, smiles))
     assert {line.substituent for line in lines} == {name}
     for line in lines:

@@ -67,7 +67,7 @@ def test_the_definition(n: int, level: str, seed: int) -> None:
         assert (low[j], high[j]) == pytest.approx(expected, abs=1e-12)
 
 
-@pytest.mark.parametrize("n", [42, 47, 52, 57, 62, 97, 197])
+@pytest.mark.parametrize("n", [42, 97])
 @pytest.mark.parametrize("coverage", [0.5, 0.8, 0.9, 0.95])
 def test_both_ends_of_a_symmetric_case_are_equally_far(n: int, coverage: float) -> None:
     # The ranks floor(alpha m) and ceil((1 - alpha) m) of m - 1 values mirror each other, in exact arithmetic.

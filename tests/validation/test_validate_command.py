@@ -19,8 +19,8 @@ from qsar.validation.with_open_rows import compare, open_measurements, train_wit
 #: Invented values, written under the header of the IUPAC Digitized pKa Dataset.
 INVENTED = (
     ("CCCCCCCC(F)C(=O)O", "pKa1", "2.61", "Reliable"),
-    ("OC(=O)CCCCCCCCCCC(=O)O", "pKa1", "4.55", "Approximate"),
-    ("OC(=O)CCCCCCCCCCC(=O)O", "pKa2", "5.45", "Approximate"),
+    ("OC(=O)CCC(F)CCCC(=O)O", "pKa1", "4.55", "Approximate"),
+    ("OC(=O)CCC(F)CCCC(=O)O", "pKa2", "5.45", "Approximate"),
     ("CC(=O)O", "pKa1", "4.75", "Reliable"),
 )
 
@@ -94,7 +94,7 @@ def test_training_on_open_rows_too(bundle: Path, invented: Path, tmp_path: Path)
     model = small_model()
     steps = read_iupac(invented / "rows.csv")
     added = open_measurements(model, steps)
-    assert {m.acid.smiles for m in added} >= {"CCCCCCCC(F)C(=O)O", "O=C(O)CCCCCCCCCCC(=O)O"}
+    assert {m.acid.smiles for m in added} >= {"CCCCCCCC(F)C(=O)O", "O=C(O)CCCC(F)CCC(=O)O"}
     assert {m.uncertainty for m in added} <= {0.02, 0.06}
     richer = train_with(model, steps)
     assert len(richer.library.pka) == len(model.library.pka) + len(added)

@@ -117,7 +117,7 @@ export class Ruler {
     this.ivory = el("div", { class: "ivory" });
     this.ticks = el("div", { class: "ticks" });
     this.node = el("div", { class: "ruler", role: "group" }, this.flags,
-      el("div", { class: "band" }, this.ivory, this.glass), this.ticks);
+      el("div", { class: "band" }, el("span", { class: "ends", "aria-hidden": "true" }, "pKa"), this.ivory, this.glass), this.ticks);
   }
 
   show(view, axis, onOpen) {
@@ -185,6 +185,7 @@ export class Ruler {
         onclick: () => !tick.own && tick.smiles && onOpen(tick.smiles),
       }, el("span", {}, number(tick.pka)));
       button.style.setProperty("--row", String(row));
+      button.style.zIndex = String(20 - row); // stems pass behind the labels above them
       peek(button, tick.own ? "" : tick.smiles, [
         el("strong", {}, said), el("span", {}, `measured ${number(tick.pka)}${tick.own ? "" : `, ${number(tick.distance)} away`}`),
         el("small", {}, tick.source)]);
