@@ -216,6 +216,8 @@ def positions(acid: Acid) -> tuple[Position, ...]:
                 continue
             if b in fixed and b not in acid.sites:
                 continue  # the OH of a carboxyl group
+            if atom.GetFormalCharge() > 0 > acid.mol.GetAtomWithIdx(b).GetFormalCharge():
+                continue  # one bond of a nitro group or an N-oxide
             atoms = _beyond(acid.mol, a, b)
             known = next((s for s in parts.substituents if s.atoms[0] == b and set(s.atoms) == set(atoms)), None)
             name = known.name if known is not None else _name(acid.mol, a, b, atoms)

@@ -42,38 +42,43 @@ class Graph:
     side: dict[tuple[int, int, int], int] = field(default_factory=dict)
 
     @classmethod
-    def from_mol(cls, mol: Chem.Mol) -> Graph:
-        """Read atoms and bonds of a sanitised molecule without explicit hydrogens."""
-        numbers, charges, hydrogens, aromatic, tags = [], [], [], [], False
-        for atom in mol.GetAtoms():
-            numbers.append(atom.GetAtomicNum())
-            charges.append(atom.GetFormalCharge())
-            hydrogens.append(atom.GetTotalNumHs())
-            aromatic.append(atom.GetIsAromatic())
-            tags = tags or atom.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED
-        n = len(numbers)
-        neighbours: list[list[int]] = [[] for _ in range(n)]
-        orders: list[list[float]] = [[] for _ in range(n)]
-        stereo = {}
-        for bond in mol.GetBonds():
+    def from_mol(cls, mol: Chem.Mol, *, stereo: bool = True) -> Graph:
+        """Read atoms and bonds of a sanitised molecule without explicit hydrogens.
+
+        Parameters
+        ----------
+        mol : rdkit.Chem.Mol
+        stereo : bool
+            False where no configuration is stated, which spares looking for it.
+        """
+        atoms = [mol.GetAtomWithIdx(a) for a in range(mol.GetNumAtoms())]
+        neighbours: list[list[int]] = [[] for _ in atoms]
+        orders: list[list[float]] = [[] for _ in atoms]
+        stated = []
+        for index in range(mol.GetNumBonds()):
+            bond = mol.GetBondWithIdx(index)
             a, b, order = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx(), bond.GetBondTypeAsDouble()
             neighbours[a].append(b)
             neighbours[b].append(a)
             orders[a].append(order)
             orders[b].append(order)
-            if order == 2.0 and bond.GetStereo() > Chem.BondStereo.STEREOANY:
-                stereo[a, b] = bond
+            if stereo and order == 2.0 and bond.GetStereo() > Chem.BondStereo.STEREOANY:
+                stated.append(bond)
         rings = mol.GetRingInfo().AtomRings()
-        size = [0] * n
-        for ring in rings:
-            for a in ring:
-                if not size[a] or len(ring) < size[a]:
-                    size[a] = len(ring)
-        graph = cls(numbers, charges, hydrogens, aromatic, neighbours, orders, rings, size)
-        for (a, b), bond in stereo.items():
-            graph.double_stereo[a, b] = _cis_trans(bond, neighbours)
+        graph = cls(
+            [atom.GetAtomicNum() for atom in atoms],
+            [atom.GetFormalCharge() for atom in atoms],
+            [atom.GetTotalNumHs() for atom in atoms],
+            [atom.GetIsAromatic() for atom in atoms],
+            neighbours,
+            orders,
+            rings,
+            _smallest_ring(len(atoms), rings),
+        )
+        for bond in stated:
+            graph.double_stereo[bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()] = _cis_trans(bond, neighbours)
         graph.double_stereo.update(_held_cis(graph))
-        if tags and rings:
+        if stereo and rings and any(atom.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED for atom in atoms):
             graph.side = _ring_sides(mol, rings)
         return graph
 
@@ -83,7 +88,10 @@ class Graph:
 
     def saturated(self, a: int) -> bool:
         """Whether an atom has single bonds only."""
-        return not self.aromatic[a] and all(o == 1.0 for o in self.orders[a])
+        if self.aromatic[a]:
+            return False
+        orders = self.orders[a]
+        return orders.count(1.0) == len(orders)
 
     def distances(self, start: int, blocked: frozenset[int] = frozenset()) -> list[int]:
         """Bonds on the shortest path from `start` to each atom; -1 where there is none.
@@ -94,15 +102,33 @@ class Graph:
         blocked : frozenset of int
             Atoms that no path may enter.
         """
-        dist = [-1] * len(self.numbers)
+        neighbours = self.neighbours
+        dist = [-1] * len(neighbours)
         dist[start] = 0
+        for b in blocked:
+            dist[b] = 0  # not to be entered
         queue = [start]
         for a in queue:
-            for b in self.neighbours[a]:
-                if dist[b] < 0 and b not in blocked:
-                    dist[b] = dist[a] + 1
+            further = dist[a] + 1
+            for b in neighbours[a]:
+                if dist[b] < 0:
+                    dist[b] = further
                     queue.append(b)
+        for b in blocked:
+            if b != start:
+                dist[b] = -1
         return dist
+
+
+def _smallest_ring(n: int, rings: tuple[tuple[int, ...], ...]) -> list[int]:
+    """Size of the smallest ring that each of `n` atoms is in, 0 outside rings."""
+    size = [0] * n
+    for ring in rings:
+        length = len(ring)
+        for a in ring:
+            if not size[a] or length < size[a]:
+                size[a] = length
+    return size
 
 
 def _cis_trans(bond: Chem.Bond, neighbours: list[list[int]]) -> dict[tuple[int, int], int]:
@@ -125,12 +151,13 @@ def _cis_trans(bond: Chem.Bond, neighbours: list[list[int]]) -> dict[tuple[int, 
 def _held_cis(graph: Graph) -> dict[tuple[int, int], dict[tuple[int, int], int]]:
     """Double bonds that a ring of up to seven atoms holds cis, where no configuration needs to be stated."""
     table: dict[tuple[int, int], dict[tuple[int, int], int]] = {}
+    aromatic, orders = graph.aromatic, graph.orders
     for ring in graph.rings:
         if len(ring) > 7:
             continue
         for k, b in enumerate(ring):
             a = ring[k - 1]
-            if graph.aromatic[a] or graph.order(a, b) != 2.0:
+            if aromatic[a] or 2.0 not in orders[a] or graph.order(a, b) != 2.0:
                 continue
             members = set(ring)
             table[a, b] = {

@@ -98,8 +98,8 @@ class _Perception:
             terminal = [o for o in oxygens if len(g.neighbours[o]) == 1 and g.hydrogens[o] == 0]
             if g.charges[a] > 0 and len(terminal) == 2:
                 self.add("nitro", a, *terminal)
-            elif g.charges[a] > 0 and len(terminal) == 1 and g.aromatic[a]:
-                self.add("n_oxide", terminal[0])
+            elif g.charges[a] > 0 and len(terminal) == 1 and 2.0 not in g.orders[a]:
+                self.add("n_oxide", *([] if g.aromatic[a] else [a]), terminal[0])
             elif len(terminal) == 1 and g.charges[a] == 0 and 2.0 in g.orders[a]:
                 self.add("nitroso", a, terminal[0])
             elif 2.0 in g.orders[a]:
@@ -307,6 +307,8 @@ def _ring_kind(g: Graph, system: set[int]) -> str:
         return "imidazolium"
     if pyridine_like and len(nitrogens) == 1 and hetero == [7]:
         return "pyridinium"
+    if len(system) not in (5, 9, 13):
+        return "heteroaryl"  # a pyrone or a pyridine N-oxide, not a five-membered ring with its one hetero atom
     kinds: dict[tuple[int, ...], str] = {(8,): "furyl", (16,): "thienyl", (7,): "pyrrolyl", (34,): "thienyl"}
     return kinds.get(tuple(hetero), "heteroaryl")
 

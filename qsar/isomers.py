@@ -25,7 +25,7 @@ def configurations(acid: Acid) -> tuple[list[Acid], str]:
         What was left open, for the user; empty where nothing is.
     """
     mol = Chem.Mol(acid.mol)
-    bonds = _open_double_bonds(mol)
+    bonds = _open_double_bonds(mol, acid)
     ring_pairs = _open_ring_pairs(acid)
     if not bonds and not ring_pairs:
         return [acid], ""
@@ -38,7 +38,7 @@ def configurations(acid: Acid) -> tuple[list[Acid], str]:
         smiles = {Chem.MolToSmiles(_forget(m, acid.mol, keep)) for m in found}
     else:
         smiles = _over_double_bonds(mol, bonds)
-    isomers = [read_acid(s) for s in sorted(smiles)]
+    isomers = _without_mirror_images([read_acid(s) for s in sorted(smiles)])
     what = "E/Z" if bonds and not ring_pairs else "cis/trans" if not bonds else "E/Z and cis/trans"
     if len(isomers) < 2:
         return [acid], ""
@@ -48,16 +48,29 @@ def configurations(acid: Acid) -> tuple[list[Acid], str]:
     )
 
 
-def _open_double_bonds(mol: Chem.Mol) -> list[int]:
+def _without_mirror_images(isomers: list[Acid]) -> list[Acid]:
+    """One of each pair of enantiomers, which have the same pKa and must not count twice in a mean."""
+    kept: dict[str, Acid] = {}
+    for acid in isomers:
+        mirrored = acid.smiles.replace("@@", "\0").replace("@", "@@").replace("\0", "@")
+        kept.setdefault(min(acid.smiles, Chem.MolToSmiles(Chem.MolFromSmiles(mirrored))), acid)
+    return list(kept.values())
+
+
+def _open_double_bonds(mol: Chem.Mol, acid: Acid) -> list[int]:
+    """Double bonds without configuration, the nearest to a carboxyl group first."""
     Chem.FindPotentialStereoBonds(mol, cleanIt=False)
-    return [
-        b.GetIdx()
+    distances = [acid.graph.distances(site) for site in acid.sites]
+    found = [
+        b
         for b in mol.GetBonds()
         if b.GetStereo() == Chem.BondStereo.STEREOANY
         and b.GetBondType() == Chem.BondType.DOUBLE
         and b.GetBeginAtom().GetAtomicNum() == b.GetEndAtom().GetAtomicNum() == 6
         and not b.IsInRing()
     ]
+    found.sort(key=lambda b: min(d[a] for d in distances for a in (b.GetBeginAtomIdx(), b.GetEndAtomIdx())))
+    return [b.GetIdx() for b in found]
 
 
 def _over_double_bonds(mol: Chem.Mol, bonds: list[int]) -> set[str]:
@@ -82,8 +95,15 @@ def _open_ring_pairs(acid: Acid) -> list[tuple[int, int]]:
     carriers = []
     for site in acid.sites:
         alpha = [b for b in graph.neighbours[site] if graph.numbers[b] == 6]
-        if alpha and graph.ring_size[alpha[0]] and graph.hydrogens[alpha[0]] == 1 and graph.saturated(alpha[0]):
+        if alpha and graph.ring_size[alpha[0]] and graph.saturated(alpha[0]):
             carriers.append(alpha[0])
+    if len(carriers) < 2:
+        return []
+    found = Chem.FindMolChiralCenters(  # type: ignore[no-untyped-call]
+        acid.mol, includeUnassigned=True, useLegacyImplementation=False
+    )
+    centres = {a for a, _ in found}
+    carriers = [a for a in carriers if a in centres]
     unspecified = [a for a in carriers if acid.mol.GetAtomWithIdx(a).GetChiralTag() == Chem.ChiralType.CHI_UNSPECIFIED]
     return [
         (a, b)

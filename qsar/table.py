@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import hashlib
+import math
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -95,15 +96,23 @@ def _measurement(path: Path, line: int, row: dict[str, str], default_uncertainty
         if not text:
             return default
         try:
-            return float(text)
+            value = float(text)
         except ValueError as error:
             raise UserError(f"{path.name}, row {line}, column {column}: '{text}' is not a number") from error
+        if not math.isfinite(value):
+            raise UserError(f"{path.name}, row {line}, column {column}: '{text}' is not a finite number")
+        return value
 
     try:
         acid = read_acid(row["smiles"] or "")
     except StructureError as error:
         raise UserError(f"{path.name}, row {line}, column smiles: {error}") from error
-    step = int(number("step", 1))
+    step, uncertainty = number("step", 1), number("uncertainty", default_uncertainty)
+    if step != int(step):
+        raise UserError(f"{path.name}, row {line}, column step: {step:g} is not a whole number")
+    if uncertainty <= 0.0:
+        raise UserError(f"{path.name}, row {line}, column uncertainty: {uncertainty:g}, must be above 0")
+    step = int(step)
     if not 1 <= step <= len(acid.sites):
         raise UserError(f"{path.name}, row {line}, column step: {step}, but the acid has {len(acid.sites)} COOH")
     if not (row["pka"] or "").strip():
@@ -112,7 +121,7 @@ def _measurement(path: Path, line: int, row: dict[str, str], default_uncertainty
         acid,
         step,
         number("pka", 0.0),
-        number("uncertainty", default_uncertainty),
+        uncertainty,
         (row.get("name") or "").strip(),
         (row.get("family") or "").strip(),
         (row.get("source") or "").strip(),

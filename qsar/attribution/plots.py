@@ -53,20 +53,18 @@ def steps_figure(explanation: Explanation, title: str = "") -> Figure:
     lines = explanation.contributions
     figure, ax = _figure(7.4, 1.35 + 0.36 * (len(lines) + 2))
     names = ["parent", *(_plain(line.substituent) for line in lines), _step_name(explanation)]
-    running = explanation.parent_pka
-    reach = [running, explanation.pka]
-    ax.plot([running], [0], "ko", markersize=6)
-    for row, line in enumerate(lines, start=1):
-        end = running + line.contribution
-        ax.plot([running, running], [row - 1, row + 0.28], color="0.55", linewidth=0.8)
-        ax.barh(row, line.contribution, left=running, height=0.56, color=tint(line.contribution), edgecolor="0.25")
-        low, high = running + line.low, running + line.high
-        ax.plot([low, high], [row, row], color="black", linewidth=1.1)
-        ax.plot([low, high], [row, row], "|", color="black", markersize=5)
-        reach += [low, high, running, end]
-        running = end
-    ax.plot([running, running], [len(lines), len(lines) + 1], color="0.55", linewidth=0.8)
+    starts = explanation.parent_pka + np.cumsum([0.0, *(line.contribution for line in lines)])
+    rows = np.arange(1, len(lines) + 1)
+    ends, low, high = starts[1:], *(starts[:-1] + [getattr(x, end) for x in lines] for end in ("low", "high"))
+    # few artists, since a report of hundreds of acids draws as many figures
+    ax.vlines(starts, [0, *rows], [*(rows + 0.28), len(lines) + 1], color="0.55", linewidth=0.8)
+    colours = [tint(line.contribution) for line in lines]
+    ax.barh(rows, ends - starts[:-1], left=starts[:-1], height=0.56, color=colours, edgecolor="0.25")
+    ax.hlines(rows, low, high, color="black", linewidth=1.1)
+    ax.plot([*low, *high], [*rows, *rows], "|", color="black", markersize=5)
+    ax.plot([explanation.parent_pka], [0], "ko", markersize=6)
     ax.plot([explanation.pka], [len(lines) + 1], "kD", markersize=6)
+    reach = [*starts, *low, *high, explanation.pka]
     span = max(max(reach) - min(reach), 0.5)
     right = max(reach) + 0.06 * span
     values = [f"{explanation.parent_pka:.2f}", *(signed(x.contribution) for x in lines), f"{explanation.pka:.2f}"]

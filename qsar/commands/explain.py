@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import argparse
-import re
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Iterator, Sequence
+from contextlib import nullcontext
 from dataclasses import dataclass, field
 from itertools import islice
 from pathlib import Path
@@ -17,7 +17,7 @@ from qsar.progress import progress
 from qsar.reading import READABLE, Record, count_records, read_sources
 
 if TYPE_CHECKING:
-    from qsar.attribution import Explained, Explanation
+    from qsar.attribution import Explained
     from qsar.model import Model
     from qsar.structures import Acid, StructureError
 
@@ -106,6 +106,7 @@ def run(args: argparse.Namespace) -> int:
     UserError
         If an output cannot be written or the model cannot be read.
     """
+    from qsar.attribution.painter import Painter
     from qsar.model import load_model
 
     folder: Path | None = args.output
@@ -117,16 +118,22 @@ def run(args: argparse.Namespace) -> int:
     wanted = True if args.progress else None
     if folder is None and report is None:
         wanted = args.progress
-    with progress(lambda: count_records(args.sources), "acids", wanted=wanted) as advance:
+    with (
+        progress(lambda: count_records(args.sources), "acids", wanted=wanted) as advance,
+        nullcontext() if folder is None else Painter(folder, args.plots, advance) as painter,
+    ):
         for records, answers in _explained(model, args, found):
             found.records += records
             found.answers += answers
             if folder is None and report is None:
                 _to_screen(records, answers)
-            elif folder is not None:
-                _plots(folder, len(found.records) - len(records), records, answers, args.plots, advance)
-            if folder is None:
+            if painter is None:
                 advance(len(records))
+            else:
+                for position, (record, answer) in enumerate(
+                    zip(records, answers, strict=True), start=len(found.records) - len(records) + 1
+                ):
+                    painter.paint(position, record, answer)
     if folder is not None and found.records:
         _tables(folder, found)
         if args.plots == "all":
@@ -159,10 +166,12 @@ def _report_path(args: argparse.Namespace) -> Path | None:
         return None
     if args.output is not None:
         return Path(args.output) / "report.html"
+    from qsar.attribution.painter import safe_name
+
     source = Path(args.sources[0])
     stem = source.stem if source.is_file() else "explanation"
     _make_folder(Path("reports"))
-    return Path("reports") / f"{_safe(stem)}.html"
+    return Path("reports") / f"{safe_name(stem)}.html"
 
 
 def _explained(
@@ -216,40 +225,9 @@ def _tables(folder: Path, found: _Answers) -> None:
         write_table(temporary, WITNESSES, rows)
 
 
-def _safe(text: str) -> str:
-    return re.sub(r"[^\w.-]+", "_", text).strip("._")[:40] or "acid"
-
-
-def _plots(
-    folder: Path,
-    first: int,
-    records: Sequence[Record],
-    answers: Sequence[Explained],
-    wanted: str,
-    advance: Callable[[int], object],
-) -> None:
-    for position, (record, answer) in enumerate(zip(records, answers, strict=True), start=first + 1):
-        for explanation in answer.steps:
-            stem = folder / f"{position:03d}-{_safe(record.id)}-step{explanation.step}"
-            if wanted != "none":
-                _draw(explanation, stem, record.id, wanted == "all")
-        advance(1)
-
-
-def _draw(explanation: Explanation, stem: Path, name: str, steps: bool) -> None:
-    from qsar.attribution.drawing import structure_png, structure_svg
-    from qsar.attribution.plots import save, steps_figure
-
-    with atomic_path(stem.with_name(f"{stem.name}-structure.svg")) as temporary:
-        temporary.write_text(structure_svg(explanation), encoding="utf-8")
-    with atomic_path(stem.with_name(f"{stem.name}-structure.png")) as temporary:
-        temporary.write_bytes(structure_png(explanation))
-    if steps:
-        save(steps_figure(explanation, f"{name}: {explanation.smiles}"), stem.with_name(f"{stem.name}-steps"))
-
-
 def _series(folder: Path, found: _Answers) -> None:
     """What only several acids show together: the table of analogues, and contribution against distance."""
+    from qsar.attribution.painter import safe_name
     from qsar.attribution.plots import analogues_figure, distance_figure, on_chain, save
 
     shown = [(r.id, e) for r, a in found.each() for e in a.steps]
@@ -263,7 +241,7 @@ def _series(folder: Path, found: _Answers) -> None:
                 distances.setdefault(line.name, set()).add(len(line.path))
     often = sorted((name for name, d in distances.items() if len(d) >= 3), key=lambda n: (-len(distances[n]), n))
     for name in often[:_MOST_DISTANCES]:
-        save(distance_figure([e for _, e in shown], name), folder / f"distance-{_safe(name)}")
+        save(distance_figure([e for _, e in shown], name), folder / f"distance-{safe_name(name)}")
 
 
 def _summarise(found: _Answers, folder: Path | None) -> None:

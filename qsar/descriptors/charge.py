@@ -171,18 +171,31 @@ def _splay(view: SiteView, term: Term) -> float:
 
 
 def _path(view: SiteView, term: Term) -> tuple[float, float, float]:
-    """Substituent atoms, quaternary carbons and unsaturated atoms on the shortest path to another group."""
+    """Substituent atoms, quaternary carbons and unsaturated atoms on the way to another group.
+
+    The mean over all shortest paths, so that no atom order decides between equal ones.
+    """
+    paths = _shortest_paths(view, term.anchor)
+    found = [_along(view, term, path) for path in paths]
+    n = len(found)
+    return sum(f[0] for f in found) / n, sum(f[1] for f in found) / n, sum(f[2] for f in found) / n
+
+
+def _shortest_paths(view: SiteView, end: int) -> list[list[int]]:
+    """All shortest paths from the alpha atom to the atom before `end`."""
     dist, graph = view.distance, view.graph
-    a = term.anchor
-    on_path: list[int] = []
-    while dist[a] > 1:
-        a = min(b for b in graph.neighbours[a] if dist[b] == dist[a] - 1)
-        on_path.append(a)
+    paths: list[list[int]] = [[end]]
+    while dist[paths[0][-1]] > 1:
+        paths = [[*p, b] for p in paths for b in graph.neighbours[p[-1]] if dist[b] == dist[p[-1]] - 1]
+    return [p[1:] for p in paths]
+
+
+def _along(view: SiteView, term: Term, path: list[int]) -> tuple[float, float, float]:
     skip = view.molecule.set_apart
     bulk = quaternary = unsaturated = 0.0
-    for x in on_path:
+    for x in path:
         side = [
-            b for b in graph.neighbours[x] if b not in skip and b not in on_path and b not in (view.site, term.anchor)
+            b for b in view.graph.neighbours[x] if b not in skip and b not in path and b not in (view.site, term.anchor)
         ]
         bulk += len(side)
         if view.molecule.unsaturated[x]:

@@ -13,7 +13,7 @@ from qsar.descriptors.resonance import ring_positions
 from qsar.descriptors.view import SiteView
 
 _COLUMNS = columns(
-    "formic alpha_hydrogens alpha_carbons alpha_quaternary alpha_unsaturated alpha_hetero beta_carbons gamma_carbons "
+    "formic alpha_hydrogens alpha_carbons alpha_quaternary alpha_unsaturated alpha_hetero gamma_carbons "
     "beta_branching alkyl_g40 saturated_carbons "
     "ring3 ring4 ring5 ring6 ring_larger ring_bridged log_atoms longest "
     "ring_hetero5 ring_o_adjacent ring_s_adjacent ring_nh_adjacent ring_n_adjacent ring_o_remote ring_s_remote "
@@ -24,7 +24,7 @@ _COLUMNS = columns(
 def _alpha(view: SiteView) -> list[float]:
     graph, dist, alpha = view.graph, view.distance, view.alpha
     if alpha < 0:
-        return [1.0] + [0.0] * 10
+        return [1.0] + [0.0] * 9
     unsaturated = view.molecule.unsaturated
     next_ = view.carbons_on(alpha)
     carbons = [a for a in view.atoms if graph.numbers[a] == 6]
@@ -37,7 +37,6 @@ def _alpha(view: SiteView) -> list[float]:
         float(len(next_) == 3),
         float(unsaturated[alpha]),
         float(sum(graph.numbers[b] != 6 for b in next_)),
-        float(sum(dist[a] == 2 for a in carbons)),
         float(sum(dist[a] == 3 for a in carbons)),
         float(branching),
         sum(0.4 ** (dist[a] - 1) for a in saturated),

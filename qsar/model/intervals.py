@@ -99,7 +99,7 @@ class Calibration:
 def _order_statistic(values: Floats, fraction: float, *, upper: bool) -> Floats:
     """The order statistic that CV+ asks for, along the first axis."""
     n = len(values)
-    rank = int(np.ceil(fraction * (n + 1))) - 1 if upper else int(np.floor(fraction * (n + 1))) - 1
+    rank = int(np.ceil(fraction * (n + 1) - 1e-9)) - 1 if upper else int(np.floor(fraction * (n + 1) + 1e-9)) - 1
     rank = min(max(rank, 0), n - 1)
     result: Floats = np.partition(values, rank, axis=0)[rank]
     return result

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -47,6 +48,9 @@ class Library:
         for row, smiles in enumerate(self.smiles):
             if smiles:
                 table.setdefault(smiles, {})[int(self.step[row])] = row
+        for smiles in list(table):  # one stereocentre alone does not matter: a flat drawing finds the measured acid
+            if len(re.findall("@+", smiles)) == 1 and not re.search(r"[/\\\\]", smiles):
+                table.setdefault(_canonical(smiles.replace("@", "")), table[smiles])
         return table
 
     def rows_of(self, smiles: str) -> dict[int, int]:

@@ -20,6 +20,7 @@ from qsar.model.members import Members
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
+_TOO_CLOSE = 1e-6
 
 
 def sensitivities(members: Members, free: Floats, lowers: Floats) -> Floats:
@@ -73,7 +74,10 @@ class Neighbours:
             + np.einsum("ij,ij->i", self.points, self.points)[None]
             - 2.0 * query @ self.points.T
         )
-        result: Floats = np.sqrt(np.maximum(squared, 0.0))
+        # Where the difference of large numbers is all that is left, take the differences themselves.
+        row, column = np.nonzero(squared < _TOO_CLOSE)
+        squared[row, column] = np.sum((query[row] - self.points[column]) ** 2, axis=1)
+        result: Floats = np.sqrt(squared)
         return result
 
 

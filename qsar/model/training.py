@@ -23,7 +23,6 @@ from qsar.model.neighbours import Neighbours, coordinates
 from qsar.model.training_set import Floats, Ints, TrainingSet, training_set
 from qsar.table import Measurement
 
-
 STRANGER_FOLDS = 5
 ANALOGUE_DISTANCE = 0.2  # pKa units; acids this close are homologues or differ in a remote group
 

@@ -8,6 +8,7 @@ from contextlib import asynccontextmanager
 from functools import partial
 from importlib.resources import files
 from typing import Annotated, Any
+from urllib.parse import quote
 
 from fastapi import FastAPI, File, Form, Query, Request, UploadFile
 from fastapi.exceptions import RequestValidationError
@@ -85,6 +86,7 @@ def create_app(settings: Settings | None = None) -> FastAPI:
         loader=PackageLoader("qsar.service"), autoescape=select_autoescape(default=True), trim_blocks=True
     )
     templates.filters["number"] = lambda value, digits=2: f"{value:.{digits}f}".replace("-", "−")
+    templates.filters["svg_data"] = lambda svg: f"data:image/svg+xml,{quote(svg)}"
     templates.filters["signed"] = lambda value: f"{value:+.2f}".replace("-", "−")
     _add_pages(app, templates)
     _add_acids(app, workers, chosen)

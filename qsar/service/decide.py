@@ -31,7 +31,7 @@ def _acids(
     Refused
         If one of them cannot be used.
     """
-    records = [Record(name or smiles, smiles) for name, smiles in asked]
+    records = [Record(name, smiles) for name, smiles in asked]
     found = []
     for outcome in steps_of_many(records, coverage, model_folder=folder):
         if outcome.acid is None:
@@ -88,7 +88,7 @@ def base(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
     from qsar.decisions.speciation import log_p_of
     from qsar.decisions.workup import Extraction, check_partitions, gentler_alternative, plan_workup
 
-    (acid,) = _acids(folder, [(q["name"], q["smiles"])], q["coverage"], q["temperature_c"])
+    (acid,) = _acids(folder, [(q["name"] or "this acid", q["smiles"])], q["coverage"], q["temperature_c"])
     check_partitions(acid)
     log_p = log_p_of(acid, q["log_p"])
     assert log_p is not None  # there is a structure without charge
@@ -154,7 +154,7 @@ def window(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
     from qsar.decisions.window import Layered, find_window
     from qsar.decisions.workup import check_partitions
 
-    asked = [(q["name"], q["smiles"]), (q["other_name"], q["other_smiles"])]
+    asked = [(q["name"] or "this acid", q["smiles"]), (q["other_name"] or "the other acid", q["other_smiles"])]
     acids = _acids(folder, asked, q["coverage"], q["temperature_c"])
     pairs = []
     for acid, given in zip(acids, (q["log_p"], q["other_log_p"]), strict=True):
@@ -201,7 +201,7 @@ def buffer(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
     """How much acid and salt make a pH, and how sure that is."""
     from qsar.decisions.buffer import Recipe, make_buffer, salt_for
 
-    (acid,) = _acids(folder, [(q["name"], q["smiles"])], q["coverage"], q["temperature_c"])
+    (acid,) = _acids(folder, [(q["name"] or "this acid", q["smiles"])], q["coverage"], q["temperature_c"])
     step = min(q["step"], len(acid.pka))
     half = 0.5 * q["total_m"]
     recipe = Recipe(half, half, step, 0.0, None, q["temperature_c"])
@@ -240,7 +240,7 @@ def buffer(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
 
 def risk(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
     """Whether a choice that holds on one side of a pKa is worth a measurement."""
-    (acid,) = _acids(folder, [(q["name"], q["smiles"])], q["coverage"], q["temperature_c"])
+    (acid,) = _acids(folder, [(q["name"] or "this acid", q["smiles"])], q["coverage"], q["temperature_c"])
     step = min(q["step"], len(acid.pka)) - 1
     flip = q["flips_at"]
     below = acid.pka[step] < flip

@@ -56,7 +56,7 @@ def _record_of_line(line: str, position: str, names: Mapping[str, str]) -> Recor
     if len(smiles) > MAX_SMILES:
         return Record(rest.strip() or position, smiles[:60] + "…", "", None, _too_long())
     if "=" not in smiles and re.fullmatch(r"[A-Za-z][\w ,()'’-]*[a-z]{3}[\w ,()'’-]*", line):
-        return Record(line, "", "", None, f"'{line[:60]}' is not the name of an acid in the table; give its SMILES")
+        return Record(line, line, "", None, f"'{line[:60]}' is not the name of an acid in the table; give its SMILES")
     return Record(rest.strip() or position, smiles)
 
 

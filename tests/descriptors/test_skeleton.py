@@ -24,14 +24,13 @@ CASES: list[tuple[str, dict[str, float]]] = [
             "saturated_carbons": 1,
         },
     ),
-    ("CC(C)(C)C(=O)O", {"alpha_hydrogens": 0, "alpha_carbons": 3, "alpha_quaternary": 1, "beta_carbons": 3}),
+    ("CC(C)(C)C(=O)O", {"alpha_hydrogens": 0, "alpha_carbons": 3, "alpha_quaternary": 1}),
     ("C=CC(=O)O", {"alpha_unsaturated": 1, "alpha_hydrogens": 1, "saturated_carbons": 0}),
     ("COCC(=O)O", {"alpha_hetero": 1, "alpha_carbons": 0, "alpha_unsaturated": 0}),
     # 3-methylbutanoic acid: C2 at one bond, C3 at two, two methyls at three: 1 + 0.4 + 2 * 0.16
     (
         "CC(C)CC(=O)O",
         {
-            "beta_carbons": 1,
             "gamma_carbons": 2,
             "beta_branching": 1,
             "alkyl_g40": 1.72,

@@ -89,7 +89,7 @@ function rank(group, wanted) {
 }
 
 async function take(state, place, group, panel) {
-  say(`Putting ${group.name} there …`);
+  say(`Putting ${group.name} there …`, true);
   try {
     const view = await askJson("swap", {
       smiles: state.view.smiles, position: place.key, group: group.smiles, coverage: state.coverage, step: state.step,

@@ -90,7 +90,7 @@ function result(answer, question) {
   const axis = new Axis([...answer.acids.flatMap((a) => a.steps.flatMap((s) => [s.low, s.high])), ...ends.filter((x) => x > -4 && x < 16)]);
   return el("article", { class: "answer" },
     el("p", { class: "headline" }, answer.headline),
-    answer.verdicts.map((v) => el("p", { class: "verdictline" }, v.sentence)),
+    answer.verdicts.map((v) => el("p", { class: "verdictline" }, v.sentence[0].toUpperCase() + v.sentence.slice(1))),
     el("div", { class: "flips" },
       el("div", { class: "lane" }, el("div", { class: "lanelabel" }, "pKa"), el("div", { class: "track ivory" }, scale(axis)), el("div", { class: "tail" })),
       answer.acids.map((acid) => acid.steps.map((step) => {

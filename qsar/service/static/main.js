@@ -41,11 +41,11 @@ async function route() {
 async function submit() {
   const given = text.value.trim();
   if (!given) {
-    say("Type or paste an acid first.");
+    say("Type or paste an acid first.", true);
     text.focus();
     return;
   }
-  say("Reading …");
+  say("Reading …", true);
   try {
     const { structures } = await askJson("read", { text: text.value });
     if (structures.length === 1 && !structures[0].error) go("acid", { s: structures[0].smiles });

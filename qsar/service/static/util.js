@@ -8,7 +8,7 @@ export function el(tag, attributes = {}, ...children) {
     else if (key === "left" || key === "width" || key === "top" || key === "height") node.style[key] = value;
     else node.setAttribute(key, value === true ? "" : value);
   }
-  node.append(...children.flat().filter((child) => child !== null && child !== undefined && child !== false));
+  node.append(...children.flat(Infinity).filter((child) => child !== null && child !== undefined && child !== false));
   return node;
 }
 
@@ -92,8 +92,11 @@ export const picture = (smiles, width, height, alt = "") =>
     width: null, alt, loading: "lazy", class: "picture",
   });
 
-export function say(text) {
-  document.getElementById("status").textContent = text;
+// For screen readers always; shown as well where nothing else on the page says it.
+export function say(text, shown = false) {
+  const status = document.getElementById("status");
+  status.textContent = text;
+  status.classList.toggle("hidden", !shown);
 }
 
 export function failed(place, problem, again) {
