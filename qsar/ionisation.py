@@ -78,13 +78,21 @@ def edge_descriptors(acid: Acid) -> Floats:
     ndarray, shape (n_edges, n_descriptors)
         In the order of :func:`cube`.
     """
+    return np.array([site_descriptors(view) for view in edge_views(acid)])
+
+
+def edge_views(acid: Acid) -> list[SiteView]:
+    """Each edge of the acid's network as a view of the carboxyl group whose proton leaves, in the order of `cube`."""
     molecule = Molecule(acid.graph)
-    network = cube(len(acid.sites))
-    rows = []
-    for q, i in zip(network.start, network.site, strict=True):
-        ionised = frozenset(s for k, s in enumerate(acid.sites) if q >> k & 1)
-        rows.append(site_descriptors(SiteView(molecule, acid.sites[i], ionised)))
-    return np.array(rows)
+    sites = acid.sites
+    if len(sites) == 1:
+        return [SiteView(molecule, sites[0])]
+    network = cube(len(sites))
+    states = [frozenset(s for k, s in enumerate(sites) if q >> k & 1) for q in range(2 ** len(sites))]
+    return [
+        SiteView(molecule, sites[i], states[q])
+        for q, i in zip(network.start.tolist(), network.site.tolist(), strict=True)
+    ]
 
 
 def free_energies(micro: Floats, n: int) -> Floats:

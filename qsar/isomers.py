@@ -24,6 +24,8 @@ def configurations(acid: Acid) -> tuple[list[Acid], str]:
     note : str
         What was left open, for the user; empty where nothing is.
     """
+    if len(acid.sites) == 1 and not _double_bonds_outside_rings(acid):
+        return [acid], ""
     mol = Chem.Mol(acid.mol)
     bonds = _open_double_bonds(mol, acid)
     ring_pairs = _open_ring_pairs(acid)
@@ -45,6 +47,23 @@ def configurations(acid: Acid) -> tuple[list[Acid], str]:
     return (
         isomers,
         f"{what} configuration not stated: predicted over {len(isomers)} isomers, interval widened to hold them",
+    )
+
+
+def _double_bonds_outside_rings(acid: Acid) -> bool:
+    """Whether there is any C=C that may be E or Z; told from the graph, which is quicker than asking RDKit."""
+    graph = acid.graph
+    return any(
+        2.0 in orders and graph.numbers[a] == 6 and _double_bonded_outside_ring(acid, a)
+        for a, orders in enumerate(graph.orders)
+    )
+
+
+def _double_bonded_outside_ring(acid: Acid, a: int) -> bool:
+    graph = acid.graph
+    return any(
+        order == 2.0 and graph.numbers[b] == 6 and not any(a in ring and b in ring for ring in graph.rings)
+        for b, order in zip(graph.neighbours[a], graph.orders[a], strict=True)
     )
 
 

@@ -45,6 +45,18 @@ _NAMES = """
 *N1CCCC1=O 2-oxopyrrolidin-1-yl|*N1C(=O)CCC1=O succinimido|*N1C(=O)c2ccccc2C1=O phthalimido
 *[O-] oxido|*CC* ethylene|*CCC* trimethylene|*CCCC* tetramethylene|*CCCCC* pentamethylene|*OCO* methylenedioxy
 *C* methylene bridge|*O* epoxy bridge|*c1cccc(*)c1 phenylene|*C(=O)OC(*)=O oxydicarbonyl
+*NC(=O)CC propanamido|*NC(=O)CCC butanamido|*NC(=O)CCCC pentanamido|*NC(=O)CCCCC hexanamido
+*NC(=O)C(C)C 2-methylpropanamido|*NC(=O)CC(C)C 3-methylbutanamido|*NC(=O)CCC(C)C 4-methylpentanamido
+*N(C)C(C)=O N-methylacetamido|*C(=O)NCC ethylcarbamoyl|*NC(=O)OCC ethoxycarbonylamino|*N=N diazenyl|*NCC ethylamino
+*[NH+](C)CC ethyl(methyl)ammonio|*[NH+](C)CCC methyl(propyl)ammonio|*[NH+](C)CCCC butyl(methyl)ammonio
+*[NH2+]CCC propylammonio|*[NH2+]CCCC butylammonio|*[NH2+]CCCCC pentylammonio|*[N+](C)(C)CC ethyldimethylammonio
+*N1CC[NH2+]CC1 piperazin-4-ium-1-yl|*[NH+]1CCNCC1 piperazin-1-ium-1-yl|*C1CC[NH2+]C1 pyrrolidin-1-ium-3-yl
+*C1CCC[NH2+]1 pyrrolidin-1-ium-2-yl|*OP(=O)(O)O phosphonooxy|*SCCC propylsulfanyl|*SC(C)C isopropylsulfanyl
+*SCCCC butylsulfanyl|*SSCC ethyldisulfanyl|*[S+](C)C dimethylsulfonio|*NO hydroxyamino|*ON aminooxy
+*N(C)N=O methyl(nitroso)amino
+*N(C)N 1-methylhydrazinyl|*c1ncccn1 pyrimidin-2-yl|*n1cccn1 pyrazol-1-yl|*c1cnoc1 isoxazol-4-yl|*C1CCCO1 oxolan-2-yl
+*C=CCC but-1-enyl|*C=C(C)C 2-methylprop-1-enyl|*OC(C)CC sec-butoxy|*OCCCCC pentyloxy|*OCCCCCC hexyloxy
+*C(=O)OCCC propoxycarbonyl|*C(=O)OC(C)C isopropoxycarbonyl|*C(=O)OC(C)(C)C tert-butoxycarbonyl|*C(=O)CCC butanoyl
 *Nc1ccccc1 anilino|*N(C)c1ccccc1 N-methylanilino|*c1ccc2c(c1)OCO2 1,3-benzodioxol-5-yl
 *N1c2ccccc2Sc2ccccc21 phenothiazin-10-yl
 """
@@ -55,7 +67,7 @@ def _names() -> dict[str, str]:
     table: dict[str, str] = {}
     for entry in _NAMES.replace("\n", "|").split("|"):
         smiles, _, name = entry.strip().partition(" ")
-        if smiles:
+        if smiles and name:
             mol = Chem.MolFromSmiles(smiles)
             table.setdefault(Chem.MolToSmiles(mol), name)
     return table

@@ -153,7 +153,7 @@ class CsvWriter(_TextWriter):
 
     def write(self, rows: Iterable[Row]) -> None:
         """Add rows."""
-        self._rows.writerows((disarmed(row.id), disarmed(row.smiles), *row[2:]) for row in rows)
+        self._rows.writerows((_cell(row.id), _cell(row.smiles), *row[2:]) for row in rows)
 
     def checkpoint(self) -> None:
         """Note that all that was written so far is complete."""
@@ -164,6 +164,11 @@ class CsvWriter(_TextWriter):
         """Close the file after an interrupt and cut off what came after the last checkpoint."""
         self._handle.close()
         os.truncate(self.path, self._complete)
+
+
+def _cell(text: str) -> str:
+    """Text for a CSV cell; a lone carriage return becomes a line feed, which the csv module quotes."""
+    return disarmed(text).replace("\r\n", "\n").replace("\r", "\n")
 
 
 def disarmed(text: str) -> str:

@@ -87,7 +87,7 @@ def imported_packages(folder: Path) -> set[str]:
 
 def test_dependencies_are_those_that_are_imported(checkout: Path) -> None:
     project = tomllib.loads((checkout / "pyproject.toml").read_text(encoding="utf-8"))["project"]
-    distributions = {"scikit-learn": "sklearn"}
+    distributions = {"scikit-learn": "sklearn", "pillow": "PIL"}
 
     def modules(requirements: list[str]) -> set[str]:
         names = [re.split(r"[<>=~! \[]", text)[0] for text in requirements]

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 import re
+import signal
 from collections.abc import Callable
 from pathlib import Path
 from types import TracebackType
@@ -70,7 +71,9 @@ class Painter:
             from concurrent.futures import ProcessPoolExecutor
             from multiprocessing import get_context
 
-            self._pool = ProcessPoolExecutor(_PROCESSES, mp_context=get_context("spawn"))
+            self._pool = ProcessPoolExecutor(
+                _PROCESSES, mp_context=get_context("spawn"), initializer=_leave_interrupts_to_the_parent
+            )
         self._waiting.append(self._pool.submit(paint, *work))
         while len(self._waiting) > _WAITING:
             self._collect()
@@ -91,6 +94,10 @@ class Painter:
         finally:
             if self._pool is not None:
                 self._pool.shutdown(cancel_futures=True)
+
+
+def _leave_interrupts_to_the_parent() -> None:
+    signal.signal(signal.SIGINT, signal.SIG_IGN)
 
 
 def paint(steps: tuple[Explanation, ...], stem: Path, name: str, with_steps: bool) -> None:

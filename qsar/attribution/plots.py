@@ -11,6 +11,7 @@ import numpy as np
 
 from qsar.attribution.drawing import plain_png, signed, tint
 from qsar.attribution.explanation import Contribution, Explanation
+from qsar.files import atomic_path
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -115,7 +116,7 @@ def analogues_figure(explanations: Sequence[Explanation], names: Sequence[str]) 
     head = ["structure", "parent", *columns, *(["others"] if left_out else []), "pKa"]
     width = 3.2 + 0.78 * (len(head) - 1)
     figure, ax = _figure(width, 1.7 + 0.62 * len(shown))
-    ax.set(xlim=(-3.2, 0.78 * (len(head) - 1)), ylim=(len(shown) + 0.06, -1.9))
+    ax.set(xlim=(-3.2, 0.78 * (len(head) - 1) + 0.03), ylim=(len(shown) + 0.06, -1.9))
     ax.axis("off")
     for row, (explanation, name, table) in enumerate(zip(shown, names, tables, strict=False)):
         _row_head(ax, row, explanation, name)
@@ -234,8 +235,26 @@ def distance_figure(explanations: Sequence[Explanation], name: str) -> Figure:
 
 
 def save(figure: Figure, stem: Path) -> None:
-    """Write a figure as PNG and SVG beside each other; the same figure makes the same files."""
-    from qsar.decisions.plots import save as save_one
+    """Write a figure as PNG and SVG beside each other; the same figure makes the same files.
 
-    for suffix in (".png", ".svg"):
-        save_one(figure, stem.with_name(stem.name + suffix))
+    Parameters
+    ----------
+    figure : matplotlib.figure.Figure
+    stem : pathlib.Path
+        File name without extension.
+
+    Raises
+    ------
+    UserError
+        If a file cannot be written.
+    """
+    from matplotlib import rc_context
+
+    with atomic_path(stem.with_name(stem.name + ".png")) as temporary:
+        figure.savefig(temporary, metadata={"Software": None}, pil_kwargs={"compress_level": 3})
+    # text stays text: smaller files, which can be searched; a fixed salt and no date make them reproducible
+    with (
+        atomic_path(stem.with_name(stem.name + ".svg")) as temporary,
+        rc_context({"svg.hashsalt": "acidity", "svg.fonttype": "none"}),
+    ):
+        figure.savefig(temporary, metadata={"Date": None})

@@ -70,7 +70,11 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         metavar="D",
         help="largest difference between duplicates that are merged (default: 0.3)",
     )
-    parser.add_argument("--model", type=Path, metavar="FOLDER", help="model for the cross-examination")
+    parser.add_argument(
+        "--model",
+        metavar="MODEL",
+        help="name or folder of the model for the cross-examination (default: the one in use)",
+    )
     parser.add_argument(
         "--no-examination", action="store_true", help="do not compare the values with a model's expectation"
     )
@@ -149,7 +153,10 @@ def _examine(args: argparse.Namespace, curated: Curated) -> list[Flag]:
     from qsar.model import load_model
     from qsar.progress import progress
 
-    model = load_model(args.model)
+    try:
+        model = load_model(args.model)
+    except UserError as problem:
+        raise UserError(f"{problem}; --no-examination curates without a model") from problem
     with progress(lambda: len(curated.kept), "rows") as done:
         return examine(curated.kept, model, done)
 

@@ -76,6 +76,7 @@ class _Inputs:
     offset: Offset | None
     corrected: bool
     newest: date | None
+    reference_acids: int
 
 
 def run(args: argparse.Namespace) -> int:
@@ -123,8 +124,9 @@ def _inputs(args: argparse.Namespace) -> _Inputs:
 
     reference = [] if args.only else read_table(reference_table())
     tables = [] if args.only else [_described(reference_table(), reference)]
+    known = len({m.acid.smiles for m in reference})
     if not args.data:
-        return _Inputs(reference, tables, None, False, None)
+        return _Inputs(reference, tables, None, False, None, known)
     table = _own(args)
     own = table.measurements
     offset = None
@@ -135,7 +137,7 @@ def _inputs(args: argparse.Namespace) -> _Inputs:
         elif args.correct_offset:
             own = without_offset(own, offset)
     tables.append(_described(args.data, own))
-    return _Inputs([*reference, *own], tables, offset, bool(offset and args.correct_offset), table.newest)
+    return _Inputs([*reference, *own], tables, offset, bool(offset and args.correct_offset), table.newest, known)
 
 
 def _own(args: argparse.Namespace) -> UserTable:
@@ -197,7 +199,9 @@ def _train(args: argparse.Namespace, inputs: _Inputs, settings: Settings, name: 
     say(f"acidity: training on {len(inputs.measurements)} steps; a run that is interrupted goes on where it stopped")
     data = training_set(inputs.measurements, weights_of(inputs.measurements))
     with progress(lambda: settings.folds, "folds", wanted=True) as done:
-        members, fold = fit_members_resumably(data, settings, cache, done, lambda t: say(f"acidity: note: {t}"))
+        members, fold = fit_members_resumably(
+            data, settings, cache, done, lambda t: say(f"acidity: note: {t}"), inputs.reference_acids
+        )
     return assemble(data, members, fold, name, _provenance(args, inputs), withhold_structures=args.withhold_structures)
 
 

@@ -18,7 +18,13 @@ def family_of(acid: Acid) -> str:
         return "amino_acid"
     system = view.alpha_system
     if system is not None:
-        return "heteroaromatic" if any(acid.graph.numbers[a] != 6 for a in system.atoms) else "benzoic"
+        graph = acid.graph
+        if any(graph.numbers[a] != 6 for a in system.atoms):
+            return "heteroaromatic"
+        if len(system.atoms) > 6:
+            return "naphthoic_fused"
+        ortho = any(len(graph.neighbours[b]) > 2 for b in graph.neighbours[view.alpha] if b in system.atoms)
+        return "benzoic_ortho" if ortho else "benzoic_meta_para"
     if view.alpha >= 0 and view.molecule.unsaturated[view.alpha]:
         return "alkenoic_alkynoic"
     if any(term.kind in ("fluoro", "chloro", "bromo", "iodo") for term in view.withdrawing):

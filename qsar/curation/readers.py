@@ -49,8 +49,11 @@ def is_iupac(path: Path) -> bool:
     """Whether a file has the header of the IUPAC Digitized pKa Dataset, release 2.x."""
     if path.suffix.lower() not in TEXT_TABLES or not path.is_file():
         return False
-    with open_table(path, sorted(IUPAC_COLUMNS)) as table:
-        return set(table.columns) >= IUPAC_COLUMNS
+    try:
+        with open_table(path, sorted(IUPAC_COLUMNS)) as table:
+            return set(table.columns) >= IUPAC_COLUMNS
+    except UserError:
+        return False  # whoever reads the rows will say what is wrong with the file
 
 
 def read_rows(

@@ -21,6 +21,7 @@ from qsar.structures import Acid, StructureError, acid_from_mol, read_acid
 
 TEMPERATURES = (15.0, 40.0)  # °C
 STRENGTHS = (0.0, 0.5)  # mol/L
+KELVIN = (273.0, 373.0)  # numbers that can only be meant so
 POSSIBLE = (-1.0, 12.0)  # pKa of a COOH in water; common practice, no source
 KA_POSSIBLE = (1e-12, 10.0)
 CERTAINLY_KA = 1e-3  # a smaller number in a column of pKa can only be a Ka
@@ -194,7 +195,7 @@ def _condition(
     if quantity.temperature_c is not None and field_ == "temperature_c":
         value = quantity.temperature_c
     factors = {"": 1.0, "c": 1.0, "m": 1.0, "mol/l": 1.0, "mm": 1e-3, "mmol/l": 1e-3}
-    if unit == "k" and field_ == "temperature_c":
+    if field_ == "temperature_c" and (unit == "k" or (not unit and KELVIN[0] <= value <= KELVIN[1])):
         changes.append(f"{label} '{text}' converted from kelvin")
         return value - ZERO_CELSIUS
     if unit not in factors or (unit == "c") != (field_ == "temperature_c" and unit != ""):

@@ -6,7 +6,7 @@ amount proportional to q / r. Through-bond distance stands for r; several decays
 
 from __future__ import annotations
 
-from qsar.descriptors.effect import Effect, columns
+from qsar.descriptors.effect import Effect, columns, decay
 from qsar.descriptors.view import SiteView, Term
 from qsar.groups import CATIONIC
 
@@ -20,12 +20,14 @@ _COLUMNS = columns(
     "cis_small_ring cis_small_ring_anion cation_substituents cation_delocalised vicinal_crowd vicinal_crowd_anion"
 )
 
+_DECAY_40, _DECAY_50, _DECAY_70, _DECAY_75 = decay(0.4), decay(0.5), decay(0.7), decay(0.75)
+
 
 def _decays(terms: list[Term]) -> list[float]:
     return [
         float(len(terms)),
-        sum(0.5 ** max(t.bonds - 1, 0) for t in terms),
-        sum(0.75 ** max(t.bonds - 1, 0) for t in terms),
+        sum([_DECAY_50[t.bonds] for t in terms]),
+        sum([_DECAY_75[t.bonds] for t in terms]),
         sum(1.0 / max(t.bonds, 1) for t in terms),
     ]
 
@@ -36,6 +38,8 @@ def _compute(view: SiteView) -> list[float]:
     anions = carboxylates + [t for t in view.terms if t.kind in ("sulfonate", "phosphonate")]
     neutral = [t for t in view.terms if t.kind == "carboxyl"]
     acids = neutral + carboxylates
+    if not (acids or cations or anions):
+        return [0.0] * len(_COLUMNS)
     nearest = min((t.bonds for t in acids), default=0)
     bulk = quaternary = unsaturated = cis = 0.0
     for t in acids:
@@ -51,8 +55,8 @@ def _compute(view: SiteView) -> list[float]:
         *_decays(anions),
         1.0 / max(min((t.bonds for t in anions), default=0), 1) if anions else 0.0,
         float(len(neutral)),
-        sum(0.4 ** max(t.bonds - 1, 0) for t in neutral),
-        sum(0.7 ** max(t.bonds - 1, 0) for t in neutral),
+        sum([_DECAY_40[t.bonds] for t in neutral]),
+        sum([_DECAY_70[t.bonds] for t in neutral]),
         1.0 / nearest if nearest else (2.0 if acids else 0.0),
         bulk,
         quaternary,

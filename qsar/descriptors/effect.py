@@ -36,6 +36,15 @@ class Effect:
     citations: tuple[str, ...]
 
 
+#: Bonds beyond which no molecule of the permitted size reaches.
+FURTHEST = 1024
+
+
+def decay(factor: float) -> tuple[float, ...]:
+    """``factor ** max(n - 1, 0)`` for n = 0, 1, 2 ... bonds, as a table to look up."""
+    return tuple(factor ** max(n - 1, 0) for n in range(FURTHEST))
+
+
 def columns(names: str, unit: str = "1", lowers: bool = False) -> tuple[Column, ...]:
     """Columns from blank-separated names."""
     return tuple(Column(name, unit, lowers) for name in names.split())

@@ -20,11 +20,13 @@ from math import log, sqrt
 
 from qsar.constants.electronegativity import group_electronegativity_of_smiles
 from qsar.constants.functional_groups import functional_groups
-from qsar.descriptors.effect import Effect, columns
+from qsar.descriptors.effect import Effect, columns, decay
 from qsar.descriptors.view import SiteView, Term
 from qsar.groups import ANIONIC, CATIONIC
 
 ATTENUATION = (0.25, 0.4, 0.6)
+_DECAYS = tuple(decay(g) for g in ATTENUATION)
+_DECAY_40, _DECAY_60 = _DECAYS[1:]
 _HYDROGEN_ELECTRONEGATIVITY = 2.20
 _BASE = 0.15  # sigma_I units; keeps the damping finite for a bare chain
 _CHARGED = frozenset(CATIONIC) | frozenset(ANIONIC)
@@ -45,7 +47,7 @@ def electronegativity_excess(kind: str) -> float:
 
 
 def _sums(terms: list[tuple[float, int]]) -> list[float]:
-    return [sum(s * g ** max(n - 1, 0) for s, n in terms) for g in ATTENUATION]
+    return [sum([s * table[n] for s, n in terms]) for table in _DECAYS]
 
 
 _LOWERS = columns(
@@ -57,6 +59,8 @@ _LOWERS = columns(
 
 
 def _withdrawing(view: SiteView) -> list[float]:
+    if not view.withdrawing:
+        return [0.0] * len(_LOWERS)
     terms = [(t.constants.sigma_i, t.bonds) for t in view.withdrawing]
     pi = [(t.constants.sigma_i, t.bonds) for t in view.withdrawing if t.pi]
     attenuated = sorted((s * 0.4 ** (n - 1) for s, n in terms), reverse=True)
@@ -97,11 +101,11 @@ def _scaffold(view: SiteView) -> list[float]:
     shells = [0.0, 0.0, 0.0, 0.0]
     for _, n in terms:
         shells[min(max(n, 1), 4) - 1] += 1.0
-    chi = sum(electronegativity_excess(t.kind) * 0.4 ** max(t.bonds - 1, 0) for t in kept)
+    chi = sum([electronegativity_excess(t.kind) * _DECAY_40[t.bonds] for t in kept])
     return [
         *_sums(terms),
-        sum(t.constants.sigma_i * 0.6 ** max(t.bonds - 1, 0) for t in kept if t.pi),
-        max((s * 0.4 ** max(n - 1, 0) for s, n in terms), default=0.0),
+        sum([t.constants.sigma_i * _DECAY_60[t.bonds] for t in kept if t.pi]),
+        max([s * _DECAY_40[n] for s, n in terms], default=0.0),
         *shells,
         chi,
         _atom_electronegativity(view),
@@ -127,8 +131,8 @@ _PAULING = {
 
 def _atom_electronegativity(view: SiteView) -> float:
     """Electronegativity of the scaffold's hetero atoms in excess of carbon's, 0.5 a bond."""
-    graph, dist = view.graph, view.distance
-    return sum((_PAULING[graph.numbers[a]] - 2.55) * 0.5 ** (dist[a] - 2) for a in view.atoms if graph.numbers[a] != 6)
+    numbers, dist = view.graph.numbers, view.distance
+    return sum([(_PAULING[numbers[a]] - 2.55) * 0.5 ** (dist[a] - 2) for a in view.atoms if numbers[a] != 6])
 
 
 def _compute(view: SiteView) -> list[float]:

@@ -37,4 +37,4 @@ def site_descriptors(view: SiteView) -> list[float]:
     values: list[float] = []
     for effect in EFFECTS:
         values.extend(effect.compute(view))
-    return [round(v, 10) for v in values]
+    return [round(v, 10) if v else v for v in values]  # most are zero

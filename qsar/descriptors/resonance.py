@@ -10,11 +10,12 @@ benzoic acid pKa values and would hand a held-out acid its own answer.
 from __future__ import annotations
 
 from qsar.constants.functional_groups import FunctionalGroup, functional_groups
-from qsar.descriptors.effect import Effect, columns
+from qsar.descriptors.effect import Effect, columns, decay
 from qsar.descriptors.view import SiteView, Term
 
 META_RESONANCE = 0.45
 PARA_RESONANCE = 1.3
+_DECAY_45, _DECAY_60 = decay(0.45), decay(0.6)
 
 _COLUMNS = columns(
     "aromatic_acid meta_sigma_i meta_sigma_r para_sigma_i para_sigma_r hammett_meta hammett_para hammett_sum "
@@ -47,6 +48,9 @@ def ring_substituents(view: SiteView, system: Term, ipso: int) -> list[tuple[int
         Position in bonds from `ipso`; alkyl groups count as substituents; the bond towards the carboxyl group
         does not.
     """
+    known = view.on_rings.get((id(system), ipso))
+    if known is not None:
+        return known
     members = set(system.atoms)
     skip = view.molecule.set_apart
     constants = functional_groups()
@@ -57,6 +61,7 @@ def ring_substituents(view: SiteView, system: Term, ipso: int) -> list[tuple[int
                 continue
             term = view.term_of.get(b)
             found.append((position, term.constants if term else constants["alkyl"], b))
+    view.on_rings[id(system), ipso] = found
     return found
 
 
@@ -123,7 +128,7 @@ def _remote(view: SiteView) -> list[float]:
     for term in view.terms:
         if term is view.alpha_system or not view.graph.aromatic[term.anchor]:
             continue
-        weight = 0.45 ** max(term.bonds - 1, 0)
+        weight = _DECAY_45[term.bonds]
         alpha_aryl += float(term.bonds == 1)
         total = 0.0
         for position, c, _ in ring_substituents(view, term, term.anchor):
@@ -131,7 +136,7 @@ def _remote(view: SiteView) -> list[float]:
             total += c.sigma_i + factor * c.sigma_r
             ortho += weight * float(position == 1)
         hammett += weight * total
-        conjugated += 0.6 ** max(term.bonds - 1, 0) * total * float(term.pi)
+        conjugated += _DECAY_60[term.bonds] * total * float(term.pi)
     if view.alpha >= 0 and view.molecule.unsaturated[view.alpha]:
         groups = float(sum(t.bonds == 1 for t in view.terms))
     return [hammett, conjugated, ortho, alpha_aryl, groups]

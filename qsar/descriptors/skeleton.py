@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from math import log
 
-from qsar.descriptors.effect import Effect, columns
+from qsar.descriptors.effect import Effect, columns, decay
 from qsar.descriptors.resonance import ring_positions
 from qsar.descriptors.view import SiteView
 
@@ -20,26 +20,28 @@ _COLUMNS = columns(
     "ring_nh_remote ring_n_remote ring_hetero_saturated"
 )
 
+_DECAY_40 = decay(0.4)
+
 
 def _alpha(view: SiteView) -> list[float]:
     graph, dist, alpha = view.graph, view.distance, view.alpha
     if alpha < 0:
         return [1.0] + [0.0] * 9
-    unsaturated = view.molecule.unsaturated
+    unsaturated, numbers = view.molecule.unsaturated, graph.numbers
     next_ = view.carbons_on(alpha)
-    carbons = [a for a in view.atoms if graph.numbers[a] == 6]
-    saturated = [a for a in carbons if not unsaturated[a]]
-    branching = sum(max(len(view.carbons_on(b)) - 1, 0) for b in next_ if not unsaturated[b])
+    carbons = [a for a in view.atoms if numbers[a] == 6]
+    saturated = [dist[a] for a in carbons if not unsaturated[a]]
+    branching = sum([max(len(view.carbons_on(b)) - 1, 0) for b in next_ if not unsaturated[b]])
     return [
         0.0,
         float(view.molecule.scaffold_hydrogens[alpha]),
-        float(sum(graph.numbers[b] == 6 for b in next_)),
+        float(sum([numbers[b] == 6 for b in next_])),
         float(len(next_) == 3),
         float(unsaturated[alpha]),
-        float(sum(graph.numbers[b] != 6 for b in next_)),
-        float(sum(dist[a] == 3 for a in carbons)),
+        float(sum([numbers[b] != 6 for b in next_])),
+        float([dist[a] for a in carbons].count(3)),
         float(branching),
-        sum(0.4 ** (dist[a] - 1) for a in saturated),
+        sum([_DECAY_40[d] for d in saturated]),
         float(len(saturated)),
     ]
 
@@ -51,7 +53,8 @@ def _rings(view: SiteView) -> list[float]:
     for ring in mine:
         sizes[min(max(len(ring), 3), 7) - 3] += 1.0
     bridged = float(len(mine) > 1)
-    outer = max((view.distance[a] for a in view.atoms), default=0)
+    dist = view.distance
+    outer = max([dist[a] for a in view.atoms], default=0)
     return [*sizes, bridged, log(len(view.atoms) + 1.0), float(min(outer, 10))]
 
 

@@ -87,12 +87,9 @@ def _compute(view: SiteView) -> list[float]:
             for c in view.carbons_on(b):
                 inner = view.term_of.get(c)
                 beta_bulk += inner.constants.bulk if inner else alkyl_bulk(view, c)
-    shells = [0.0, 0.0, 0.0]
-    for a in view.atoms:
-        d = view.distance[a]
-        if 3 <= d <= 5:
-            shells[d - 3] += 1.0
-    return [*_ortho(view), alpha_bulk, beta_bulk, *shells]
+    dist = view.distance
+    bonds = [dist[a] for a in view.atoms]
+    return [*_ortho(view), alpha_bulk, beta_bulk, *(float(bonds.count(d)) for d in (3, 4, 5))]
 
 
 STERIC = Effect(

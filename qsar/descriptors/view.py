@@ -79,6 +79,13 @@ class Molecule:
         self.unsaturated = [not graph.saturated(a) for a in range(n)]
         for a in self.set_apart:
             self.unsaturated[a] = False
+        self._around: dict[int, Surroundings] = {}
+
+    def around(self, site: int) -> Surroundings:
+        """What the carboxyl group with this carbon sees, made once."""
+        if site not in self._around:
+            self._around[site] = Surroundings(self, site)
+        return self._around[site]
 
 
 _PROTONATED_ABOVE = 1.5  # a ring nitrogen weaker than this is neutral where the carboxyl proton leaves
@@ -106,24 +113,19 @@ def _saturated_carrier(graph: Graph, group: Group) -> int:
     return -1
 
 
-class SiteView:
-    """Everything a descriptor needs to know about one carboxyl group in one charge state.
+class Surroundings:
+    """What one carboxyl group sees whatever the charges of the others: shared by the views of all its states.
 
     Parameters
     ----------
     molecule : Molecule
     site : int
-        Carboxyl carbon whose proton leaves.
-    ionised : frozenset of int
-        Carboxyl carbons of the other groups that have already lost their proton.
+        Carboxyl carbon.
     """
 
-    def __init__(self, molecule: Molecule, site: int, ionised: frozenset[int] = frozenset()) -> None:
+    def __init__(self, molecule: Molecule, site: int) -> None:
         self.molecule = molecule
-        self.graph = molecule.graph
-        self.site = site
-        self.ionised = ionised
-        graph = self.graph
+        self.graph = graph = molecule.graph
         own = molecule.carboxyls[site].atoms
         self.own = frozenset(own)
         blocked = frozenset(own[1:])
@@ -132,28 +134,29 @@ class SiteView:
         self.alpha = alpha[0] if alpha else -1
         self.through_pi = self._through_pi()
         self.atoms = [a for a, d in enumerate(self.distance) if d > 0 and a not in molecule.set_apart]
-        constants = functional_groups()
+        self._constants = functional_groups()
         self.withdrawing = [
-            Term(g.kind, g.atoms, g.atoms[0], self.distance[c], self.through_pi[c], constants[g.kind])
+            Term(g.kind, g.atoms, g.atoms[0], self.distance[c], self.through_pi[c], self._constants[g.kind])
             for g, c in molecule.withdrawing
         ]
-        self.terms = [self._term(g, constants) for g in molecule.others]
-        for carbon, group in molecule.carboxyls.items():
-            if carbon != site:
-                kind = "carboxylate" if carbon in ionised else "carboxyl"
-                self.terms.append(self._oriented(kind, group, carbon, constants))
+        self.terms = [self._term(g) for g in molecule.others]
 
     def _through_pi(self) -> list[bool]:
         """For each atom, whether all shortest paths to it cross an unsaturated atom (itself not counted)."""
-        graph, dist, unsaturated = self.graph, self.distance, self.molecule.unsaturated
+        neighbours, dist, unsaturated = self.graph.neighbours, self.distance, self.molecule.unsaturated
         flags = [False] * len(dist)
         for a in sorted((x for x, d in enumerate(dist) if d > 1), key=dist.__getitem__):
-            flags[a] = all(flags[p] or unsaturated[p] for p in graph.neighbours[a] if dist[p] == dist[a] - 1)
+            before = dist[a] - 1
+            for p in neighbours[a]:
+                if dist[p] == before and not (flags[p] or unsaturated[p]):
+                    break
+            else:
+                flags[a] = True
         return flags
 
-    def _term(self, group: Group, constants: dict[str, FunctionalGroup]) -> Term:
+    def _term(self, group: Group) -> Term:
         graph, dist = self.graph, self.distance
-        anchor = min(group.atoms, key=lambda a: dist[a])
+        anchor = group.atoms[0] if len(group.atoms) == 1 else min(group.atoms, key=dist.__getitem__)
         kind = group.kind
         if kind in _ORIENTED:
             number = graph.numbers[anchor]
@@ -172,17 +175,51 @@ class SiteView:
                 ("ether", False): "alkoxy",
                 ("sulfide", True): "arylthio",
             }.get((kind, aryl), "alkylthio")
-        return self._oriented(kind, group, anchor, constants)
+        return self.oriented(kind, group, anchor)
 
-    def _oriented(self, kind: str, group: Group, anchor: int, constants: dict[str, FunctionalGroup]) -> Term:
+    def oriented(self, kind: str, group: Group, anchor: int) -> Term:
+        """The group as a term of this kind, seen from `anchor`."""
         return Term(
             kind,
             group.atoms,
             anchor,
             max(self.distance[anchor] - 1, 0),
             self.through_pi[anchor],
-            constants[kind],
+            self._constants[kind],
         )
+
+
+class SiteView:
+    """Everything a descriptor needs to know about one carboxyl group in one charge state.
+
+    Parameters
+    ----------
+    molecule : Molecule
+    site : int
+        Carboxyl carbon whose proton leaves.
+    ionised : frozenset of int
+        Carboxyl carbons of the other groups that have already lost their proton.
+    """
+
+    def __init__(self, molecule: Molecule, site: int, ionised: frozenset[int] = frozenset()) -> None:
+        self.molecule = molecule
+        self.graph = molecule.graph
+        self.site = site
+        self.ionised = ionised
+        around = molecule.around(site)
+        self.own = around.own
+        self.distance = around.distance
+        self.alpha = around.alpha
+        self.through_pi = around.through_pi
+        self.atoms = around.atoms
+        self.withdrawing = around.withdrawing
+        self.terms = list(around.terms)
+        for carbon, group in molecule.carboxyls.items():
+            if carbon != site:
+                kind = "carboxylate" if carbon in ionised else "carboxyl"
+                self.terms.append(around.oriented(kind, group, carbon))
+        #: What :mod:`qsar.descriptors.resonance` found on each aromatic system, so that it looks once.
+        self.on_rings: dict[tuple[int, int], list[tuple[int, FunctionalGroup, int]]] = {}
 
     @cached_property
     def term_of(self) -> dict[int, Term]:
@@ -211,6 +248,6 @@ class SiteView:
 
     def carbons_on(self, a: int) -> list[int]:
         """Scaffold neighbours of an atom that lie further out."""
-        dist = self.distance
-        skip = self.molecule.set_apart
-        return [b for b in self.graph.neighbours[a] if dist[b] > dist[a] and b not in skip]
+        dist, skip = self.distance, self.molecule.set_apart
+        here = dist[a]
+        return [b for b in self.graph.neighbours[a] if dist[b] > here and b not in skip]

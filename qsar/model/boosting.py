@@ -8,13 +8,18 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
+from qsar.model.lookup import Lookup
+
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int32]
+
+_WORTH_TABLES = 100  # rows from which making the tables takes less time than it saves
 
 
 @dataclass(frozen=True)
@@ -70,18 +75,29 @@ class Trees:
         """
         n_ensembles, n_trees = self.root.shape
         result = np.empty((n_ensembles, len(x)))
-        split_on = np.maximum(self.feature, 0)
+        lookup = self._lookup if len(x) >= _WORTH_TABLES else None
         for start in range(0, len(x), rows_at_once):
             block = x[start : start + rows_at_once]
-            flat = block.ravel()
-            offset = (np.arange(len(block)) * block.shape[1])[:, None]
-            node = np.broadcast_to(self.root.ravel(), (len(block), self.root.size))
-            for _ in range(self.depth):
-                goes_left = flat[split_on[node] + offset] <= self.threshold[node]
-                node = np.where(goes_left, self.left[node], self.right[node])
-            leaves = self.threshold[node].reshape(len(block), n_ensembles, n_trees)
-            result[:, start : start + rows_at_once] = leaves.sum(axis=2).T + self.baseline[:, None]
+            leaves = self._walk(block) if lookup is None else lookup.leaves(block)
+            sums = leaves.reshape(len(block), n_ensembles, n_trees).sum(axis=2)
+            result[:, start : start + rows_at_once] = sums.T + self.baseline[:, None]
         return result
+
+    @cached_property
+    def _lookup(self) -> Lookup | None:
+        return Lookup.of(self)
+
+    def _walk(self, x: Floats) -> Floats:
+        """Value of each tree for each row of `x`, shape (n, n_trees)."""
+        split_on = np.maximum(self.feature, 0)
+        flat = x.ravel()
+        offset = (np.arange(len(x)) * x.shape[1])[:, None]
+        node = np.broadcast_to(self.root.ravel(), (len(x), self.root.size))
+        for _ in range(self.depth):
+            goes_left = flat[split_on[node] + offset] <= self.threshold[node]
+            node = np.where(goes_left, self.left[node], self.right[node])
+        leaves: Floats = self.threshold[node]
+        return leaves
 
 
 def fit_booster(

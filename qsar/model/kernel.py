@@ -76,11 +76,23 @@ class Scaling:
 def covariance(a: Floats, b: Floats, settings: KernelSettings) -> Floats:
     """Prior covariance of the scaffold part between scaled rows `a` (n, d) and `b` (m, d); shape (n, m)."""
     product = a @ b.T
-    squared = np.einsum("ij,ij->i", a, a)[:, None] + np.einsum("ij,ij->i", b, b)[None] - 2.0 * product
-    r = np.sqrt(3.0 * np.maximum(squared, 0.0)) / settings.length
-    matern = settings.amplitude**2 * (1.0 + r) * np.exp(-r)
-    result: Floats = matern + settings.linear**2 * product + 1.0
-    return result
+    r: Floats = np.einsum("ij,ij->i", a, a)[:, None] + np.einsum("ij,ij->i", b, b)[None]
+    # From here on in place: of large matrices, making new ones takes longer than reckoning.
+    scratch = 2.0 * product
+    r -= scratch  # squared distance
+    np.maximum(r, 0.0, out=r)
+    r *= 3.0
+    np.sqrt(r, out=r)
+    r /= settings.length
+    np.negative(r, out=scratch)
+    np.exp(scratch, out=scratch)
+    r += 1.0
+    r *= settings.amplitude**2
+    r *= scratch  # Matern 3/2
+    product *= settings.linear**2
+    r += product
+    r += 1.0
+    return r
 
 
 @dataclass(frozen=True)

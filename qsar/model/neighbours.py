@@ -69,16 +69,37 @@ class Neighbours:
     def distances(self, members: Members, x: Floats) -> Floats:
         """Distance of each row of `x` (n, n_descriptors) to each measured step; shape (n, n_steps)."""
         query = coordinates(members, self.weights, x)
-        squared = (
-            np.einsum("ij,ij->i", query, query)[:, None]
-            + np.einsum("ij,ij->i", self.points, self.points)[None]
-            - 2.0 * query @ self.points.T
+        squared: Floats = (
+            np.einsum("ij,ij->i", query, query)[:, None] + np.einsum("ij,ij->i", self.points, self.points)[None]
         )
+        squared -= 2.0 * query @ self.points.T
         # Where the difference of large numbers is all that is left, take the differences themselves.
         row, column = np.nonzero(squared < _TOO_CLOSE)
         squared[row, column] = np.sum((query[row] - self.points[column]) ** 2, axis=1)
-        result: Floats = np.sqrt(squared)
-        return result
+        return np.sqrt(squared, out=squared)
+
+
+def nearest(distances: Floats, count: int) -> Ints:
+    """Columns of the smallest distances of each row, nearest first, of equal ones the first.
+
+    Parameters
+    ----------
+    distances : ndarray, shape (n, n_steps)
+    count : int
+
+    Returns
+    -------
+    ndarray of int, shape (n, min(count, n_steps))
+    """
+    if distances.shape[1] <= count:
+        return np.argsort(distances, axis=1, kind="stable")
+    found = np.sort(np.argpartition(distances, count - 1, axis=1)[:, :count], axis=1)
+    kept = np.take_along_axis(distances, found, axis=1)
+    found = np.take_along_axis(found, np.argsort(kept, axis=1, kind="stable"), axis=1)
+    # Where the last place is shared, the partition may have kept any of those that share it.
+    shared = np.count_nonzero(distances <= kept.max(axis=1, keepdims=True), axis=1) > count
+    found[shared] = np.argsort(distances[shared], axis=1, kind="stable")[:, :count]
+    return found
 
 
 def coordinates(members: Members, weights: Floats, x: Floats) -> Floats:

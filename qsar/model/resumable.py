@@ -7,6 +7,7 @@ import json
 import shutil
 import zipfile
 from collections.abc import Callable, Sequence
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -14,6 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from qsar.descriptors import LOWERS
+from qsar.errors import UserError
 from qsar.files import atomic_path
 from qsar.model.boosting import Trees, trees_of
 from qsar.model.bundle import settings_to
@@ -26,15 +28,38 @@ _PLAIN = ("dual", "slopes", "offset", "depth")
 Arrays = dict[str, NDArray[Any]]
 
 
-def fingerprint(data: TrainingSet, settings: Settings) -> str:
-    """Hexadecimal SHA-256 of everything that decides the members: descriptors, values, settings, libraries."""
+def deal_folds(acids: int, settings: Settings, first_part: int | None = None) -> Ints:
+    """Fold of each acid, dealt out for two parts of the table apart.
+
+    The acids of the reference table so keep their folds when others are added, and two models of one seed can be
+    compared acid by acid on predictions made without the acid.
+
+    Parameters
+    ----------
+    acids : int
+    settings : Settings
+    first_part : int, optional
+        Acids of the first part; all where not given.
+
+    Returns
+    -------
+    ndarray of int, shape (acids,)
+    """
+    first = acids if first_part is None else first_part
+    rest = fold_of_acids(acids - first, replace(settings, seed=settings.seed + 1))
+    return np.concatenate([fold_of_acids(first, settings), rest])
+
+
+def fingerprint(data: TrainingSet, settings: Settings, fold: Ints) -> str:
+    """Hexadecimal SHA-256 of everything that decides the members: descriptors, values, folds, settings, libraries."""
     import scipy
     import sklearn
 
     digest = hashlib.sha256()
     versions = [np.__version__, scipy.__version__, sklearn.__version__]
     digest.update(json.dumps([settings_to(settings), versions], sort_keys=True).encode())
-    for array in (data.x, data.first, data.step_acid, data.step_number, data.pka, data.uncertainty, data.weight):
+    arrays = (data.x, data.first, data.step_acid, data.step_number, data.pka, data.uncertainty, data.weight, fold)
+    for array in arrays:
         digest.update(repr((array.shape, array.dtype.str)).encode() + np.ascontiguousarray(array).tobytes())
     return digest.hexdigest()
 
@@ -45,6 +70,7 @@ def fit_members_resumably(
     cache: Path,
     done: Callable[[int], object] = lambda _: None,
     note: Callable[[str], None] = lambda _: None,
+    first_part: int | None = None,
 ) -> tuple[Members, Ints]:
     """Fit the ensemble as :func:`qsar.model.members.fit_members` does, member by member through a cache.
 
@@ -53,11 +79,14 @@ def fit_members_resumably(
     data : TrainingSet
     settings : Settings
     cache : pathlib.Path
-        Folder for the finished members; made if need be, and left for the caller to remove.
+        Folder for the finished members; made if need be, and left for the caller to remove. Where nothing can be
+        written there, the training goes on without it and says so.
     done : callable
         Called with 1 after each member, found or fitted.
     note : callable
         Told, in one line, what was found.
+    first_part : int, optional
+        Acids, at the beginning, whose folds are dealt out apart; see `deal_folds`.
 
     Returns
     -------
@@ -65,10 +94,11 @@ def fit_members_resumably(
     fold : ndarray of int, shape (n_acids,)
         Member that never saw each acid.
     """
-    fold = fold_of_acids(len(data.acids), settings)
+    import scipy.linalg  # noqa: F401 - loaded first, or the limit to one thread in `fit_member` does not reach it
+
+    fold = deal_folds(len(data.acids), settings, first_part)
     scaling = Scaling.of(data.x[:, ~LOWERS])
-    key = fingerprint(data, settings)[:24]
-    cache.mkdir(parents=True, exist_ok=True)
+    key = fingerprint(data, settings, fold)[:24]
     fitted: list[Arrays] = []
     found = 0
     for k in range(settings.folds):
@@ -80,8 +110,7 @@ def fit_members_resumably(
             arrays = {name: getattr(trees, name) for name in _TREES}
             arrays |= {"dual": member.dual, "slopes": member.slopes}
             arrays |= {"offset": np.array(member.offset), "depth": np.array(trees.depth)}
-            with atomic_path(path) as temporary:
-                np.savez(temporary, **arrays)  # type: ignore[arg-type]
+            _write(path, arrays, note)
         else:
             found += 1
         fitted.append(arrays)
@@ -112,6 +141,17 @@ def _read(path: Path, note: Callable[[str], None]) -> Arrays | None:
         return None
 
 
+def _write(path: Path, arrays: Arrays, note: Callable[[str], None]) -> None:
+    """Keep a finished member; where that is impossible the training goes on without."""
+    try:
+        # Each time anew: another training of the same name may have ended and removed the folder.
+        path.parent.mkdir(parents=True, exist_ok=True)
+        with atomic_path(path) as temporary:
+            np.savez(temporary, **arrays)  # type: ignore[arg-type]
+    except (OSError, UserError) as problem:
+        note(f"the finished fold cannot be kept ({problem}); an interrupt would lose it")
+
+
 def join_trees(parts: Sequence[Arrays]) -> Trees:
     """Several ensembles of one as one of several, nodes in the order of :func:`qsar.model.boosting.trees_of`."""
     base = np.cumsum([0, *(len(p["feature"]) for p in parts)])
@@ -133,4 +173,4 @@ def join_trees(parts: Sequence[Arrays]) -> Trees:
 
 def remove_cache(cache: Path) -> None:
     """Delete the finished members of a training that has ended well."""
-    shutil.rmtree(cache, ignore_errors=True)
+    shutil.rmtree(cache, ignore_errors=True)  # what stays is overwritten by the next training of that name

@@ -76,6 +76,8 @@ def read_user_table(path: Path) -> UserTable:
     try:
         measurements = read_table(path)
     except UserError as problem:
+        if not path.is_file():
+            raise
         raise UserError(f"{problem}; `acidity curate {path.name}` makes a clean table") from problem
     with path.open(encoding="utf-8-sig", newline="") as handle:
         reader = csv.DictReader(handle)

@@ -228,7 +228,7 @@ def report(desk: Desk, smiles: Sequence[tuple[str, str]], coverage: float) -> li
     return [
         {"id": name, "given": text, "error": a.error}
         if a.error is not None
-        else {"id": name, "given": text, "error": None, **acid_view(desk.model, a, 1)}
+        else {"id": name, "given": text, "error": None, **acid_view(desk.model, a, 1, for_paper=True)}
         for (name, text), a in zip(smiles, answers, strict=True)
     ]
 

@@ -20,6 +20,7 @@ if TYPE_CHECKING:
     from qsar.structures import Acid
 
 WIDTH, HEIGHT = 560, 400
+PAPER_WIDTH, PAPER_HEIGHT = 280, 190
 
 
 @cache
@@ -34,7 +35,7 @@ def citation(key: str) -> str:
     return _citations().get(key, key)
 
 
-def acid_view(model: Model, explained: Explained, step: int, with_picture: bool = True) -> dict[str, Any]:
+def acid_view(model: Model, explained: Explained, step: int, *, for_paper: bool = False) -> dict[str, Any]:
     """Everything about one acid.
 
     Parameters
@@ -44,8 +45,8 @@ def acid_view(model: Model, explained: Explained, step: int, with_picture: bool 
         A usable acid with its explanations.
     step : int
         The step whose contributions tint the drawing, from 1; held to those that there are.
-    with_picture : bool
-        Whether to draw it and to find its positions.
+    for_paper : bool
+        A small drawing without positions.
     """
     prediction = explained.prediction
     acid = prediction.acid
@@ -65,9 +66,9 @@ def acid_view(model: Model, explained: Explained, step: int, with_picture: bool 
         "steps": steps,
         "notes": notes,
     }
-    if with_picture:
-        places = positions(acid)
-        view["drawing"], view["positions"] = _drawing(acid, explained.steps[shown - 1], places)
+    places = () if for_paper else positions(acid)
+    size = (PAPER_WIDTH, PAPER_HEIGHT) if for_paper else (WIDTH, HEIGHT)
+    view["drawing"], view["positions"] = _drawing(acid, explained.steps[shown - 1], places, *size)
     return view
 
 
@@ -78,11 +79,11 @@ def name_of(model: Model, smiles: str) -> str:
 
 
 def _drawing(
-    acid: Acid, explanation: Explanation, places: Sequence[Position]
+    acid: Acid, explanation: Explanation, places: Sequence[Position], width: int, height: int
 ) -> tuple[dict[str, Any], list[dict[str, Any]]]:
     tints = {a: line.contribution for line in explanation.contributions for a in line.atoms}
-    picture = draw(acid.mol, WIDTH, HEIGHT, tints=tints, positions=places)
-    drawing = {"light": picture.light, "dark": picture.dark, "width": WIDTH, "height": HEIGHT}
+    picture = draw(acid.mol, width, height, tints=tints, positions=places)
+    drawing = {"light": picture.light, "dark": picture.dark, "width": width, "height": height}
     listed = [
         {
             "key": p.key,

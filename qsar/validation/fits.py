@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from qsar.descriptors import LOWERS
+from qsar.errors import UserError
 from qsar.model.kernel import Scaling, fit_trend
 from qsar.model.library import Library
 from qsar.model.members import START_NEUTRAL, Settings, fit_member, join_members
@@ -70,7 +71,15 @@ class Fit:
 
 
 def problem_of(library: Library, settings: Settings) -> Problem:
-    """The training table as a model carries it, rows in the library's order."""
+    """The training table as a model carries it, rows in the library's order.
+
+    Raises
+    ------
+    UserError
+        If the model withholds its structures.
+    """
+    if not all(library.smiles):
+        raise UserError("the model withholds its structures, so that it cannot be fitted again to parts of its table")
     acids = {smiles: read_acid(smiles) for smiles in library.smiles}
     rows = zip(
         library.smiles,

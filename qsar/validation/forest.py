@@ -39,7 +39,7 @@ def count_fingerprints(acids: Sequence[Acid], steps: Ints) -> Floats:
     return np.column_stack([counts, np.asarray(steps, dtype=float), sites])
 
 
-def fit_forest(x: Floats, y: Floats, seed: int = 0, trees: int = 200):  # type: ignore[no-untyped-def]
+def fit_forest(x: Floats, y: Floats, seed: int = 0, trees: int = 100):  # type: ignore[no-untyped-def]
     """Fit a random forest (Breiman, Mach. Learn. 2001, 45, 5) to count fingerprints.
 
     Returns

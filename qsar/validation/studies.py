@@ -50,7 +50,7 @@ class Scale:
     fractions: tuple[float, ...] = (0.125, 0.25, 0.5, 0.75, 1.0)
     draws: int = 3
     permutations: int = 10
-    perturbations: int = 5
+    perturbations: int = 3
 
 
 FULL = Scale()

@@ -135,6 +135,12 @@ def test_units_in_cells_are_read_and_said() -> None:
     assert sum("read as" in c or "kelvin" in c or "left out" in c for c in row.changes) == 3
 
 
+def test_a_temperature_that_can_only_be_kelvin_is_read_so() -> None:
+    row = usable(temperature_c="298.15")
+    assert row.temperature_c == pytest.approx(25.0)
+    assert any("kelvin" in c for c in row.changes)
+
+
 def test_conditions_in_the_cell_of_the_value_count() -> None:
     assert usable(pka="4.76 (20 °C)", temperature_c="").temperature_c == 20.0
     assert "outside" in refusal(pka="4.76 (60 °C)", temperature_c="")

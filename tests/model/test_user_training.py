@@ -13,15 +13,16 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+import scipy.linalg  # noqa: F401 - loaded before the first fit, so that all fits run in one thread
 from small_models import QUICK, reference_rows
 
 from qsar import cli
 from qsar.errors import UserError
 from qsar.model import load
 from qsar.model.bundle import arrays_of
-from qsar.model.members import fit_members
+from qsar.model.members import Settings, fit_members, fold_of_acids
 from qsar.model.offset import estimate_offset, without_offset
-from qsar.model.resumable import fingerprint, fit_members_resumably
+from qsar.model.resumable import deal_folds, fingerprint, fit_members_resumably
 from qsar.model.training_set import training_set
 from qsar.model.user_table import read_date, read_user_table, weights_of
 from qsar.table import Measurement
@@ -74,15 +75,37 @@ def test_an_interrupted_training_goes_on(some: list[Measurement], tmp_path: Path
     assert np.array_equal(resumed.dual, fit_members(data, QUICK)[0].dual)
 
 
+def test_a_cache_that_cannot_be_written_stops_nothing(some: list[Measurement], tmp_path: Path) -> None:
+    (tmp_path / "file").write_text("in the way", encoding="utf-8")
+    notes: list[str] = []
+    members, _ = fit_members_resumably(training_set(some), QUICK, tmp_path / "file" / "cache", note=notes.append)
+    assert len(notes) == 3 and "cannot be kept" in notes[0]
+    assert len(members.dual) == 3
+
+
 def test_the_cache_of_another_table_or_setting_is_not_taken(some: list[Measurement]) -> None:
+    def key(rows: list[Measurement], settings: Settings = QUICK, weights: list[float] | None = None) -> str:
+        data = training_set(rows, weights)
+        return fingerprint(data, settings, deal_folds(len(data.acids), settings))
+
+    data = training_set(some)
     keys = {
-        fingerprint(training_set(some), QUICK),
-        fingerprint(training_set(some), replace(QUICK, seed=2)),
-        fingerprint(training_set(some[1:]), QUICK),
-        fingerprint(training_set([replace(some[0], pka=some[0].pka + 1e-6), *some[1:]]), QUICK),
-        fingerprint(training_set(some, [0.5] * len(some)), QUICK),
+        key(some),
+        key(some, replace(QUICK, seed=2)),
+        key(some[1:]),
+        key([replace(some[0], pka=some[0].pka + 1e-6), *some[1:]]),
+        key(some, weights=[0.5] * len(some)),
+        fingerprint(data, QUICK, deal_folds(len(data.acids), QUICK, 50)),
     }
-    assert len(keys) == 5
+    assert len(keys) == 6
+
+
+def test_acids_of_the_reference_keep_their_folds_when_others_are_added() -> None:
+    alone, more = deal_folds(100, QUICK), deal_folds(130, QUICK, 100)
+    assert np.array_equal(alone, more[:100])
+    assert np.array_equal(alone, fold_of_acids(100, QUICK))
+    assert np.ptp(np.bincount(more)) <= 2
+    assert len(deal_folds(102, QUICK, 100)) == 102
 
 
 def test_uncertain_rows_weigh_less(some: list[Measurement]) -> None:

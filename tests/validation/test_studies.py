@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from functools import cache
 from pathlib import Path
 
@@ -10,6 +11,7 @@ import pytest
 from rdkit.Chem.rdFingerprintGenerator import GetMorganGenerator
 from small_models import QUICK, small_model
 
+from qsar.errors import UserError
 from qsar.structures import read_acid
 from qsar.validation import fits, splits, studies
 from qsar.validation.cache import Cache
@@ -133,6 +135,7 @@ def test_processes_do_not_change_the_numbers() -> None:
     assert all(np.array_equal(one[name], two[name]) for name in one)
 
 
+@pytest.mark.slow
 def test_studies_on_a_small_table() -> None:
     data = problem().data
     results = run(problem(), studies.all_fits(problem(), SMALL))
@@ -147,6 +150,12 @@ def test_studies_on_a_small_table() -> None:
     robust = studies.robustness(data, SMALL, results)
     assert 0 < robust.moved < 0.2
     assert robust.uncertainty == pytest.approx(data.uncertainty.mean())
+
+
+def test_a_model_without_structures_is_refused() -> None:
+    library = small_model().library
+    with pytest.raises(UserError, match="withholds its structures"):
+        problem_of(replace(library, smiles=[""] * len(library.smiles)), QUICK)
 
 
 def test_permuting_keeps_the_values() -> None:

@@ -1,6 +1,6 @@
 // The drawing whose places can be chosen, and the groups that can be put there.
 
-import { Axis, bar, dot, lane, verdict } from "./axis.js";
+import { Axis, bar, dot, lane, scale, verdict } from "./axis.js";
 import { openStep, tintedDrawing } from "./acid.js";
 import { askJson, el, failed, number, say, signed } from "./util.js";
 
@@ -49,7 +49,8 @@ export function bench(state) {
   return el("section", { class: "bench", "aria-label": "Swap a substituent" },
     el("div", { class: "board" }, tintedDrawing(view), handles),
     el("div", { class: "swap" }, el("h2", {}, "Swap a substituent"),
-      el("p", { class: "field" }, el("label", { for: "place" }, "Place"), list), panel));
+      el("p", { class: "field" }, el("label", { for: "place" }, "Place"), list), panel),
+    el("div", { class: "all" }));
 }
 
 async function fill(panel, state, place) {
@@ -73,12 +74,13 @@ async function fill(panel, state, place) {
   search.addEventListener("input", show);
   const low = el("input", { type: "number", step: "0.1", id: "low", size: 5 });
   const high = el("input", { type: "number", step: "0.1", id: "high", size: 5 });
-  const all = el("div", { class: "all" });
+  const all = panel.closest(".bench")?.querySelector(".all") || el("div");
+  all.replaceChildren();
   panel.replaceChildren(
     el("p", { class: "field" }, el("label", { for: "search" }, `Instead of ${place.hydrogen ? "H" : place.group}`), search), list,
     el("form", { class: "try", onsubmit: (event) => { event.preventDefault(); tryAll(state, place, low, high, all); } },
       el("button", { type: "submit" }, "Try all here"),
-      el("span", {}, el("label", { for: "low" }, "pKa from"), low, el("label", { for: "high" }, "to"), high)), all);
+      el("span", {}, el("label", { for: "low" }, "pKa from"), low, el("label", { for: "high" }, "to"), high)));
   show();
 }
 
@@ -114,12 +116,15 @@ async function tryAll(state, place, low, high, target) {
     const axis = new Axis(usable.flatMap((row) => [row.low, row.high]));
     const count = `${usable.length} group${usable.length === 1 ? "" : "s"} at ${answer.place || "this place"}, by rising pKa`;
     say(count);
-    target.replaceChildren(el("h3", {}, count),
-      usable.length ? null : el("p", {}, "No group of the list meets this range; widen it, or choose another place."),
-      el("ol", { class: "lanes tight" }, usable.map((row) => lane(
+    const from = value(low) ?? axis.low;
+    const to = value(high) ?? axis.high;
+    const wanted = value(low) === null && value(high) === null ? [] : [el("span", { class: "holds", left: axis.at(from), width: axis.span(from, to) })];
+    target.replaceChildren(el("h3", {}, count), ...(usable.length ? [] : [el("p", {}, "No group of the list meets this range; widen it, or choose another place.")]),
+      el("div", { class: "lane" }, el("div", { class: "lanelabel" }, "pKa"), el("div", { class: "track ivory" }, scale(axis)), el("div", { class: "tail" }, "change, verdict")),
+      el("ol", { class: "lanes", tabindex: "0", "aria-label": count }, usable.map((row) => lane(
         el("button", { type: "button", class: "plain", onclick: () => take(state, place, { name: row.group, smiles: groups.find((g) => g.name === row.group).smiles }, target) }, row.group),
-        axis, [bar(axis, row.low, row.high, row.domain), dot(axis, row.pka, row.domain)],
-        [el("b", {}, number(row.pka)), el("small", {}, ` ${signed(row.change)} `), verdict(row.domain)], { tag: "li" }))));
+        axis, [wanted.map((node) => node.cloneNode()), bar(axis, row.low, row.high, row.domain), dot(axis, row.pka, row.domain)],
+        [el("b", {}, number(row.pka)), ` (${signed(row.change)}) `, el("small", {}, verdict(row.domain))], { tag: "li" }))));
   } catch (problem) {
     failed(target, problem, () => tryAll(state, place, low, high, target));
   }
