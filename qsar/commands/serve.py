@@ -14,7 +14,7 @@ from qsar.errors import UserError
 
 HELP = "start the page for chemists on this machine"
 
-_NEEDED = ("fastapi", "uvicorn", "jinja2", "multipart")
+_NEEDED = ("fastapi", "uvicorn", "jinja2", "python_multipart")
 _EVERYWHERE = ("0.0.0.0", "::")
 
 

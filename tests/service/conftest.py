@@ -15,7 +15,7 @@ from typing import Any
 
 import pytest
 
-NEEDED = ("fastapi", "uvicorn", "jinja2", "multipart", "httpx")
+NEEDED = ("fastapi", "uvicorn", "jinja2", "python_multipart", "httpx")
 CHROMIUM_ARGUMENTS = [
     "--no-sandbox", "--disable-gpu", "--disable-dev-shm-usage", "--disable-background-networking",
     "--disable-component-update", "--disable-sync", "--no-first-run", "--mute-audio",
