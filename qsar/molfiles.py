@@ -44,11 +44,12 @@ def read_mol_file(path: Path, note: Callable[[str], None]) -> Iterator[Record]:
         number of the entry. An entry that RDKit cannot read has its `error`.
     """
     with open_text(path, note) as handle:
-        for number, entry in enumerate(_entries(bounded_lines(handle)), start=1):
-            yield _record(entry, number, f"{path.name}, entry {number}")
+        for number, entry in enumerate(sdf_entries(bounded_lines(handle)), start=1):
+            yield record_of(entry, number, f"{path.name}, entry {number}")
 
 
-def _entries(lines: Iterator[str | None]) -> Iterator[_Entry]:
+def sdf_entries(lines: Iterator[str | None]) -> Iterator[_Entry]:
+    """Entries of an SD file, one at a time."""
     entry = _Entry()
     for line in lines:
         if line is not None and line.startswith("$$$$"):
@@ -60,10 +61,11 @@ def _entries(lines: Iterator[str | None]) -> Iterator[_Entry]:
         yield entry
 
 
-def _record(entry: _Entry, number: int, where: str) -> Record:
+def record_of(entry: _Entry, number: int, where: str) -> Record:
+    """Record of one entry; `number` is its id where it has none."""
     if entry.size > MAX_ENTRY:
         return Record(str(number), "", where, None, f"the entry is longer than {MAX_ENTRY:,} characters")
-    items = _data_items(entry.lines)
+    items = data_items(entry.lines)
     title = entry.lines[0].strip() if entry.lines else ""
     identity = items.get("id") or items.get("name") or title or str(number)
     block = "\n".join(entry.lines)
@@ -89,7 +91,7 @@ def _molecule(block: str) -> tuple[Chem.Mol | None, str | None]:
     return None, "the entry is not a readable MOL block; export it again from the drawing program"
 
 
-def _data_items(lines: list[str]) -> dict[str, str]:
+def data_items(lines: list[str]) -> dict[str, str]:
     """First lines of the data items of an entry (``> <name>`` and the value below), names in lower case."""
     items: dict[str, str] = {}
     for line, value in pairwise(lines):

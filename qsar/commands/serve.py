@@ -114,6 +114,7 @@ def _listen(host: str, port: int) -> socket.socket:
         listener = socket.socket(family, kind, protocol)
         listener.setsockopt(socket.SOL_SOCKET, socket.SO_REUSEADDR, 1)
         listener.bind(address)
+        listener.listen(256)  # who reads the address that is printed may connect at once
     except OSError as problem:
         raise UserError(
             f"cannot listen on {host}:{port} ({problem.strerror or problem}); choose another --port"

@@ -135,15 +135,15 @@ def _table(
 def _structures(
     path: Path, named: Mapping[str, str] | None, quantity: str | None, note: Callable[[str], None]
 ) -> tuple[list[RawRow], Columns]:
-    from qsar.molfiles import _data_items, _entries, _record
+    from qsar.molfiles import data_items, record_of, sdf_entries
     from qsar.spreadsheets import bounded_lines, open_text
 
     entries = []
     with open_text(path, lambda text: note(f"{path.name}: {text}")) as handle:
-        for number, entry in enumerate(_entries(bounded_lines(handle)), start=1):
+        for number, entry in enumerate(sdf_entries(bounded_lines(handle)), start=1):
             if number > MOST_ROWS:
                 raise UserError(f"more than {MOST_ROWS:,} entries; split the file")
-            entries.append((number, _record(entry, number, path.name), _data_items(entry.lines)))
+            entries.append((number, record_of(entry, number, path.name), data_items(entry.lines)))
     headers = list(dict.fromkeys(name for _, _, items in entries for name in items))
     columns = map_columns(headers, named, quantity, has_structures=True)
     rows = []

@@ -158,7 +158,6 @@ class Domain:
 
 def basic_nitrogen(view: SiteView) -> str:
     """A sentence where a ring nitrogen or aniline shares the measured constants with the carboxyl group, else ""."""
-    group_of = {a: group for group in reversed(view.molecule.groups) for a in group.atoms}
     for term in view.terms:
         if term.kind in ("pyridinium", "imidazolium"):
             return (
@@ -166,6 +165,7 @@ def basic_nitrogen(view: SiteView) -> str:
                 "measured constant may belong to the N-H proton"
             )
         if term.kind == "amino":
+            group_of = {a: group for group in reversed(view.molecule.groups) for a in group.atoms}
             pka = anilinium_pka(view.graph, term.anchor, group_of)
             if pka is not None and pka > 2.0:
                 return (

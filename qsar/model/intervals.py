@@ -88,20 +88,22 @@ class Calibration:
             used = np.flatnonzero(self.label == value)
             if len(used) < _LEAST_OF_CLASS:
                 used = np.arange(len(self.scores))
-            centre = np.tile(by_member[np.ix_(self.member[used], rows)], (2, 1))
+            centre = np.tile(by_member[:, rows].T[:, self.member[used]], 2)
             both = np.concatenate([self.scores[used], self.stranger_scores[used]])
-            reach = both[:, None] * scale[rows][None]
+            reach = scale[rows][:, None] * both
             low[rows] = _order_statistic(centre - reach, 1.0 - coverage, upper=False)
-            high[rows] = _order_statistic(centre + reach, coverage, upper=True)
+            centre += reach
+            high[rows] = _order_statistic(centre, coverage, upper=True)
         return low, high
 
 
 def _order_statistic(values: Floats, fraction: float, *, upper: bool) -> Floats:
-    """The order statistic that CV+ asks for, along the first axis."""
-    n = len(values)
+    """The order statistic that CV+ asks for, along the last axis; `values` are reordered."""
+    n = values.shape[-1]
     rank = int(np.ceil(fraction * (n + 1) - 1e-9)) - 1 if upper else int(np.floor(fraction * (n + 1) + 1e-9)) - 1
     rank = min(max(rank, 0), n - 1)
-    result: Floats = np.partition(values, rank, axis=0)[rank]
+    values.partition(rank, axis=-1)
+    result: Floats = values[..., rank]
     return result
 
 

@@ -122,6 +122,7 @@ def fit_member(data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], s
     seed : int
         For the booster and the inner folds.
     """
+    import scipy.linalg  # noqa: F401 - its threads are limited too, from the first fit on
     from threadpoolctl import threadpool_limits
 
     with threadpool_limits(1):  # sums in one order, so that the arrays do not depend on the number of threads
@@ -154,6 +155,7 @@ def _converged_trend(
 
 def trend_without(data: TrainingSet, members: Members, wanted: NDArray[np.bool_]) -> Floats:
     """Micro pKa of all edges by a trend fitted to the wanted measurements alone, shape (n_edges,)."""
+    import scipy.linalg  # noqa: F401 - its threads are limited too, from the first fit on
     from threadpoolctl import threadpool_limits
 
     with threadpool_limits(1):

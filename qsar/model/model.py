@@ -10,16 +10,17 @@ import numpy as np
 from numpy.typing import NDArray
 
 from qsar.advisories import advise
-from qsar.descriptors import Molecule, SiteView
+from qsar.descriptors import SiteView, site_descriptors
 from qsar.errors import UserError
-from qsar.ionisation import closure_defect, cube, edge_descriptors, macroscopic
+from qsar.ionisation import closure_defect, cube, edge_views, macroscopic
 from qsar.isomers import configurations
 from qsar.model.domain import VERDICTS, Domain, has_cation
 from qsar.model.intervals import Calibration
 from qsar.model.library import Library
 from qsar.model.members import Members
-from qsar.model.neighbours import Neighbours
-from qsar.model.training_set import dominant_edge
+from qsar.model.neighbours import Neighbours, nearest
+from qsar.model.training_set import dominant_edges
+from qsar.notebook import Predictions
 from qsar.structures import Acid, StructureError, read_acid
 
 if TYPE_CHECKING:
@@ -97,8 +98,61 @@ class _Case:
     """One configuration of one input while it is predicted."""
 
     acid: Acid
-    molecule: Molecule
+    views: list[SiteView]
     x: Floats
+
+
+def _case(acid: Acid) -> _Case:
+    views = edge_views(acid)
+    return _Case(acid, views, np.array([site_descriptors(view) for view in views]))
+
+
+@dataclass(frozen=True)
+class _Steps:
+    """The steps of all cases, case by case; all arrays but `by_member` have shape (n_steps,).
+
+    Attributes
+    ----------
+    case, step, edge : ndarray of int
+        Case, step from 1, and the edge that carries most of its flux.
+    pka, defect : ndarray
+        The whole model's pKa, and by how much the case's network misses closing.
+    by_member : ndarray, shape (n_members, n_steps)
+        Each member's pKa.
+    """
+
+    case: NDArray[np.int64]
+    step: NDArray[np.int64]
+    edge: NDArray[np.int64]
+    pka: Floats
+    defect: Floats
+    by_member: Floats
+
+
+def _steps_of(sites: list[int], micro: Floats) -> _Steps:
+    """Steps of cases with so many sites from the micro pKa (n_members, n_edges) of all their edges, in order."""
+    counts = np.array(sites)
+    first = np.concatenate([[0], np.cumsum([len(cube(n).start) for n in sites])])
+    mean = micro.mean(axis=0)
+    parts: list[tuple[NDArray[Any], ...]] = []
+    for n in sorted(set(sites)):  # cases with the same number of sites together
+        own = np.flatnonzero(counts == n)
+        edges = first[own][:, None] + np.arange(len(cube(n).start))
+        local = dominant_edges(mean[edges], n)
+        defect = closure_defect(mean[edges], n) if n > 1 else np.zeros(len(own))
+        parts.append(
+            (
+                np.repeat(own, n),
+                np.tile(np.arange(1, n + 1), len(own)),
+                (first[own][:, None] + local).ravel(),
+                macroscopic(mean[edges], n).ravel(),
+                np.repeat(defect, n),
+                macroscopic(micro[:, edges], n).reshape(len(micro), -1),
+            )
+        )
+    joined = [np.concatenate(same, axis=-1) for same in zip(*parts, strict=True)]
+    order = np.argsort(joined[0], kind="stable")
+    return _Steps(*(part[..., order] for part in joined))
 
 
 @dataclass(frozen=True, eq=False)
@@ -173,7 +227,7 @@ class Model:
                 continue
             isomers, note = configurations(acid)
             own = list(range(len(cases), len(cases) + len(isomers)))
-            cases.extend(_Case(a, Molecule(a.graph), edge_descriptors(a)) for a in isomers)
+            cases.extend(_case(a) for a in isomers)
             places.append((i, own, note))
             results[i] = Prediction(acid.smiles, [], None, acid)
         if cases:
@@ -183,45 +237,36 @@ class Model:
                 assert first is not None and first.acid is not None
                 joined = _join([steps[k] for k in own], note)
                 results[i] = Prediction(first.structure, self._finish(first.acid, joined), None, first.acid)
-        return [r for r in results if r is not None]
+        return Predictions(r for r in results if r is not None)
 
     def _predict_cases(self, cases: list[_Case], coverage: float) -> list[list[StepPrediction]]:
-        trend, boosted = self.members.predict(np.vstack([case.x for case in cases]))
-        by_member = trend + boosted
+        all_x = np.vstack([case.x for case in cases])
+        trend, boosted = self.members.predict(all_x)
+        rows = _steps_of([len(case.acid.sites) for case in cases], trend + boosted)
         first = np.concatenate([[0], np.cumsum([len(case.x) for case in cases])])
-        rows: list[tuple[int, int, int]] = []  # case, step, edge
-        macro: list[Floats] = []
-        pka: list[float] = []
-        defects: list[float] = []
-        for c, case in enumerate(cases):
-            own = slice(int(first[c]), int(first[c + 1]))
-            n = len(case.acid.sites)
-            mean = by_member[:, own].mean(axis=0)
-            whole = macroscopic(mean, n)
-            each = macroscopic(by_member[:, own], n)
-            defect = float(closure_defect(mean, n)) if n > 1 else 0.0
-            for step in range(1, n + 1):
-                rows.append((c, step, own.start + (dominant_edge(mean, n, step) if n > 1 else 0)))
-                macro.append(each[:, step - 1])
-                pka.append(float(whole[step - 1]))
-                defects.append(defect)
-        edge = np.array([r[2] for r in rows])
-        x = np.vstack([case.x for case in cases])[edge]
-        views = [self._view(cases[c], int(e - first[c])) for c, _, e in rows]
+        x = all_x[rows.edge]
+        views = [cases[c].views[e - first[c]] for c, e in zip(rows.case, rows.edge, strict=True)]
         distances = self.neighbours.distances(self.members, x)
-        near = np.argsort(distances, axis=1, kind="stable")[:, :_NEAR]
+        near = nearest(distances, _NEAR)
         evidence = evidence_of(
             distances,
             np.abs(self.library.pka - self.library.pka_without),
-            np.abs(boosted[:, edge]).mean(axis=0),
-            np.array(defects),
+            np.abs(boosted[:, rows.edge]).mean(axis=0),
+            rows.defect,
             np.array([self.domain.sparse(view) for view in views]),
+            near,
         )
         scale = self.calibration.expected_error(evidence)
-        label = np.array([class_of(views[k], len(cases[c].acid.sites), step) for k, (c, step, _) in enumerate(rows)])
-        low, high = self.calibration.interval(np.array(macro).T, scale, label, coverage)
+        pka = rows.pka
+        label = np.array(
+            [
+                class_of(view, len(cases[c].acid.sites), int(step))
+                for view, c, step in zip(views, rows.case, rows.step, strict=True)
+            ]
+        )
+        low, high = self.calibration.interval(rows.by_member, scale, label, coverage)
         result: list[list[StepPrediction]] = [[] for _ in cases]
-        for k, (c, step, _) in enumerate(rows):
+        for k, (c, step) in enumerate(zip(rows.case.tolist(), rows.step.tolist(), strict=True)):
             found = tuple(self._neighbour(int(j), float(distances[k, j])) for j in near[k])
             best = found[0]
             verdict, reasons = self.domain.judge(
@@ -230,7 +275,7 @@ class Model:
             result[c].append(
                 StepPrediction(
                     step,
-                    pka[k],
+                    float(pka[k]),
                     float(min(low[k], pka[k])),
                     float(max(high[k], pka[k])),
                     coverage,
@@ -248,13 +293,6 @@ class Model:
             )
         return result
 
-    def _view(self, case: _Case, edge: int) -> SiteView:
-        network = cube(len(case.acid.sites))
-        state = int(network.start[edge])
-        sites = case.acid.sites
-        ionised = frozenset(s for k, s in enumerate(sites) if state >> k & 1)
-        return SiteView(case.molecule, sites[int(network.site[edge])], ionised)
-
     def _neighbour(self, row: int, distance: float) -> Neighbour:
         library = self.library
         return Neighbour(
@@ -269,7 +307,7 @@ class Model:
     def _finish(self, acid: Acid, steps: list[StepPrediction]) -> list[StepPrediction]:
         """Add what was measured of the acid itself, and what else a user should know about it."""
         known = self.library.rows_of(acid.smiles)
-        advice = advise(acid.mol)
+        advice = advise(acid.mol, acid.graph.numbers)
         finished = []
         for s in steps:
             row = known.get(s.step)
@@ -312,11 +350,11 @@ def _join(isomers: list[list[StepPrediction]], note: str) -> list[StepPrediction
         return isomers[0]
     joined = []
     for same in zip(*isomers, strict=True):
-        nearest = min(same, key=lambda s: s.nearest_distance or 0.0)
+        closest = min(same, key=lambda s: s.nearest_distance or 0.0)
         worst = max(same, key=lambda s: VERDICTS.index(s.domain))
         joined.append(
             replace(
-                nearest,
+                closest,
                 pka=float(np.mean([s.pka for s in same])),
                 low=min(s.low for s in same),
                 high=max(s.high for s in same),
@@ -335,7 +373,14 @@ def class_of(view: SiteView, n_sites: int, step: int) -> int:
     return 3 if has_cation(view) else 0
 
 
-def evidence_of(distances: Floats, errors: Floats, boosted: Floats, defect: Floats, sparse: Floats) -> Floats:
+def evidence_of(
+    distances: Floats,
+    errors: Floats,
+    boosted: Floats,
+    defect: Floats,
+    sparse: Floats,
+    near: NDArray[np.int64] | None = None,
+) -> Floats:
     """Evidence of difficulty; columns as in :data:`qsar.model.intervals.EVIDENCE`.
 
     Parameters
@@ -350,12 +395,15 @@ def evidence_of(distances: Floats, errors: Floats, boosted: Floats, defect: Floa
         Closure defect of the network.
     sparse : ndarray, shape (n,)
         How thinly the groups are covered.
+    near : ndarray of int, shape (n, 5), optional
+        The nearest measured steps of each, where they have been found already.
 
     Returns
     -------
     ndarray, shape (n, n_evidence)
     """
-    near = np.argsort(distances, axis=1, kind="stable")[:, :_NEAR]
+    if near is None:
+        near = nearest(distances, _NEAR)
     ordered = np.take_along_axis(distances, near, axis=1)
     weight = 1.0 / (ordered + 0.1)
     local = (np.minimum(errors[near], 1.0) * weight).sum(axis=1) / weight.sum(axis=1)

@@ -12,6 +12,7 @@ import numpy as np
 
 from qsar.descriptors import Molecule, SiteView
 from qsar.descriptors.pipeline import NAMES
+from qsar.errors import UserError
 from qsar.ionisation import cube
 from qsar.model.bundle import KIND, SCHEMA, settings_to
 from qsar.model.domain import Domain
@@ -61,9 +62,18 @@ def train(
     -------
     Model
         The same arrays, bit for bit, from the same measurements, settings and library versions.
+
+    Raises
+    ------
+    UserError
+        If there are fewer acids than two a fold.
     """
     settings = settings or Settings()
     data = training_set(measurements, weights)
+    if len(data.acids) < 2 * settings.folds:
+        raise UserError(
+            f"{len(data.acids)} acids are too few for {settings.folds} folds; give at least {2 * settings.folds}"
+        )
     members, fold = fit_members(data, settings, done, jobs)
     return assemble(data, members, fold, name, provenance or {}, withhold_structures=withhold_structures)
 

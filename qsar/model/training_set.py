@@ -86,6 +86,31 @@ def dominant_edge(micro: Floats, n: int, step: int) -> int:
     return int(at_level[np.flatnonzero(share >= share.max() - 1e-9)[0]])
 
 
+def dominant_edges(micro: Floats, n: int) -> Ints:
+    """`dominant_edge` of each step of several acids with `n` sites.
+
+    Parameters
+    ----------
+    micro : ndarray, shape (n_acids, n_edges)
+    n : int
+
+    Returns
+    -------
+    ndarray of int, shape (n_acids, n)
+    """
+    result = np.zeros((len(micro), n), dtype=np.int64)
+    if n == 1:
+        return result
+    network = cube(n)
+    edge_level = network.level[network.start]
+    shares = flux(micro, n)
+    for step in range(n):
+        at_level = np.flatnonzero(edge_level == step)
+        share = shares[:, at_level]
+        result[:, step] = at_level[np.argmax(share >= share.max(axis=1, keepdims=True) - 1e-9, axis=1)]
+    return result
+
+
 def training_set(measurements: Sequence[Measurement], weights: Sequence[float] | None = None) -> TrainingSet:
     """Join measurements of the same structure and compute the descriptors of all edges."""
     position: dict[str, int] = {}

@@ -47,9 +47,15 @@ class Guard:
             await self.app(scope, receive, send)
             return
         started = False
+        overrun: list[Refused] = []
 
         async def sending(message: Message) -> None:
             nonlocal started
+            if overrun and not started:  # whatever the application makes of a body that broke off
+                started = True
+                await _refuse(overrun[0], send)
+            if overrun:
+                return
             if message["type"] == "http.response.start":
                 started = True
                 message = {**message, "headers": _with_security(list(message.get("headers", [])))}
@@ -60,10 +66,11 @@ class Guard:
             self._check_host(headers.get(b"host"))
             _check_origin(headers)
             self._check_length(headers.get(b"content-length"))
-            await self.app(scope, self._counted(receive), sending)
+            await self.app(scope, self._counted(receive, overrun), sending)
         except Refused as refusal:
             if started:
                 raise
+            overrun.clear()
             await _refuse(refusal, sending)
 
     def _check_host(self, host: bytes | None) -> None:
@@ -85,8 +92,8 @@ class Guard:
     def _too_large(self) -> str:
         return f"more than {self.settings.max_body >> 20} MiB in one request; cut the file into parts"
 
-    def _counted(self, receive: Receive) -> Receive:
-        """Pass the body on while it is within its limits of size and time."""
+    def _counted(self, receive: Receive, overrun: list[Refused]) -> Receive:
+        """Pass the body on while it is within its limits of size and time; note where it is not."""
         size = 0
         complete = False
 
@@ -97,12 +104,14 @@ class Guard:
             try:
                 message = await asyncio.wait_for(receive(), self.settings.body_seconds)
             except TimeoutError:
-                raise Refused(408, "the request did not arrive in time; send it again") from None
+                overrun.append(Refused(408, "the request did not arrive in time; send it again"))
+                raise overrun[0] from None
             if message["type"] == "http.request":
                 size += len(message.get("body", b""))
                 complete = not message.get("more_body", False)
                 if size > self.settings.max_body:
-                    raise Refused(_TOO_LARGE, self._too_large())
+                    overrun.append(Refused(_TOO_LARGE, self._too_large()))
+                    raise overrun[0]
             return message
 
         return receiving
@@ -149,5 +158,5 @@ async def _refuse(refusal: Refused, send: Send) -> None:
         (b"content-length", str(len(body)).encode()),
         (b"connection", b"close"),  # the rest of the body is not read
     ]
-    await send({"type": "http.response.start", "status": refusal.status, "headers": headers})
+    await send({"type": "http.response.start", "status": refusal.status, "headers": _with_security(headers)})
     await send({"type": "http.response.body", "body": body})

@@ -118,6 +118,7 @@ def open_page(chromium: Any, client: Any, server: str, console: Console) -> Iter
         context.route("**", lambda route: route.continue_() if route.request.url.startswith((server, "data:", "blob:")) else route.abort())
         page = context.new_page()
         page.set_default_timeout(20_000)
+        page.server = server
         console.listen(page)
         page.goto(f"{server}/{address}")
         return page

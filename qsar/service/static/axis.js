@@ -149,9 +149,8 @@ export class Ruler {
       this.glass.append(cursor.glass);
     }
     const { flag, glass } = cursor;
-    const name = several ? `step ${step.step}: ` : "";
-    flag.replaceChildren(el("small", {}, several ? `step ${step.step}` : "pKa"), ` ${number(step.pka)}`);
-    flag.setAttribute("aria-label", `${name}pKa ${number(step.pka)}, from ${number(step.low)} to ${number(step.high)}`);
+    flag.replaceChildren(el("small", {}, several ? `step ${step.step}` : "pKa"), ` ${number(step.pka)}`,
+      el("span", { class: "hidden" }, `, interval ${number(step.low)} to ${number(step.high)}`));
     flag.setAttribute("aria-pressed", String(step.step === shown));
     flag.style.left = axis.at(step.pka);
     flag.style.setProperty("--row", String(row));
