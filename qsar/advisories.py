@@ -45,10 +45,12 @@ def _least(pattern: Chem.Mol) -> tuple[tuple[int, int], ...]:
     """Elements that a pattern needs; atoms that may be one of several elements are not counted."""
     counts: Counter[int] = Counter()
     for atom in pattern.GetAtoms():
-        text = atom.GetSmarts()
-        if not re.search(r"[,!$*]", text):
-            counts[atom.GetAtomicNum()] += 1
-    counts.pop(0, None)
+        text = atom.GetSmarts().strip("[]")
+        if re.search(r"[$!*]", text):
+            continue
+        elements = {re.sub(r"[XHDR]\d*|[&;+-]", "", choice).casefold() for choice in text.split(",")}
+        if len(elements) == 1:
+            counts[Chem.GetPeriodicTable().GetAtomicNumber(elements.pop().capitalize())] += 1
     return tuple(counts.items())
 
 

@@ -10,7 +10,7 @@ import re
 from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cache
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from rdkit import Chem
 
@@ -353,7 +353,7 @@ def swap(acid: Acid, position: Position, group: Group) -> Acid:
 
 def _without_hydrogens(mol: Chem.Mol) -> Chem.Mol:
     """Fold drawn hydrogens back, also one that no longer tells cis from trans."""
-    options = Chem.RemoveHsParameters()
+    options: Any = Chem.RemoveHsParameters()
     options.removeDefiningBondStereo = True
     try:
         Chem.SanitizeMol(mol)
@@ -395,7 +395,7 @@ def analogues(
     step : int
         The step that sorts and filters, from 1.
     low, high : float, optional
-        Only analogues whose interval meets this range of pKa.
+        Only analogues whose predicted pKa lies in this range; the intervals say how sure that is.
     coverage : float
         Of the intervals.
 
@@ -429,7 +429,7 @@ def analogues(
 
 
 def _meets(step: StepPrediction, low: float | None, high: float | None) -> bool:
-    return (low is None or step.high >= low) and (high is None or step.low <= high)
+    return (low is None or step.pka >= low) and (high is None or step.pka <= high)
 
 
 def _step(prediction: Prediction, step: int) -> StepPrediction | None:

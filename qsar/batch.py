@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 import os
+import pickle
 import signal
 from collections import deque
 from collections.abc import Callable, Iterable, Iterator
 from contextlib import closing
+from dataclasses import dataclass
 from itertools import islice
 from pathlib import Path
+from threading import Lock
 from typing import TYPE_CHECKING
 
 from qsar.errors import UserError
@@ -21,7 +24,7 @@ if TYPE_CHECKING:
     from qsar.model.model import Model
     from qsar.structures import Acid, StructureError
 
-CHUNK = 500
+CHUNK = 256
 """Structures that are predicted together; their arrays stay small and workers stay busy."""
 
 OpenModel = Callable[[], "Model"]
@@ -41,6 +44,7 @@ def predict_records(
     *,
     coverage: float = 0.9,
     jobs: int = 1,
+    cluster: str | None = None,
     chunk: int = CHUNK,
     debug: bool = False,
 ) -> Iterator[list[Answer]]:
@@ -56,6 +60,8 @@ def predict_records(
         Fraction that the intervals are meant to hold.
     jobs : int
         Number of processes.
+    cluster : str, optional
+        Address of a Dask scheduler: the chunks are predicted there, and `jobs` does not matter.
     chunk : int
         Records that are predicted together.
     debug : bool
@@ -73,6 +79,12 @@ def predict_records(
     """
     _one_thread()
     chunks = _chunks(records, chunk)
+    if cluster is not None:
+        from qsar.cluster import in_order
+
+        open_model()
+        yield from in_order(cluster, _OnCluster(open_model, coverage, debug), chunks)
+        return
     if jobs == 1:
         model = open_model()
         for block in chunks:
@@ -129,6 +141,29 @@ def _readable(record: Record) -> str | Acid | StructureError:
         return acid_from_mol(record.mol)
     except StructureError as reason:
         return reason
+
+
+@dataclass(frozen=True)
+class _OnCluster:
+    """What a worker of a cluster does with a chunk; it keeps the model that it opened last."""
+
+    open_model: OpenModel
+    coverage: float
+    debug: bool
+
+    def __call__(self, block: list[Record]) -> list[Answer]:
+        key = pickle.dumps(self.open_model)
+        with _opening:
+            if key not in _opened:
+                _one_thread()
+                _opened.clear()
+                _opened[key] = self.open_model()
+            model = _opened[key]
+        return _predict_chunk(model, block, self.coverage, self.debug)
+
+
+_opened: dict[bytes, Model] = {}
+_opening = Lock()
 
 
 class _Workers:

@@ -51,13 +51,13 @@ class Graph:
         stereo : bool
             False where no configuration is stated, which spares looking for it.
         """
-        atoms = [mol.GetAtomWithIdx(a) for a in range(mol.GetNumAtoms())]
+        atoms = list(map(mol.GetAtomWithIdx, range(mol.GetNumAtoms())))
+        bonds = list(map(mol.GetBondWithIdx, range(mol.GetNumBonds())))
         neighbours: list[list[int]] = [[] for _ in atoms]
         orders: list[list[float]] = [[] for _ in atoms]
         stated = []
-        for index in range(mol.GetNumBonds()):
-            bond = mol.GetBondWithIdx(index)
-            a, b, order = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx(), bond.GetBondTypeAsDouble()
+        begin, end = map(Chem.Bond.GetBeginAtomIdx, bonds), map(Chem.Bond.GetEndAtomIdx, bonds)
+        for bond, a, b, order in zip(bonds, begin, end, map(Chem.Bond.GetBondTypeAsDouble, bonds), strict=True):
             neighbours[a].append(b)
             neighbours[b].append(a)
             orders[a].append(order)
@@ -66,10 +66,10 @@ class Graph:
                 stated.append(bond)
         rings = mol.GetRingInfo().AtomRings()
         graph = cls(
-            [atom.GetAtomicNum() for atom in atoms],
-            [atom.GetFormalCharge() for atom in atoms],
-            [atom.GetTotalNumHs() for atom in atoms],
-            [atom.GetIsAromatic() for atom in atoms],
+            list(map(Chem.Atom.GetAtomicNum, atoms)),
+            list(map(Chem.Atom.GetFormalCharge, atoms)),
+            list(map(Chem.Atom.GetTotalNumHs, atoms)),
+            list(map(Chem.Atom.GetIsAromatic, atoms)),
             neighbours,
             orders,
             rings,

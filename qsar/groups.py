@@ -59,11 +59,15 @@ class _Perception:
 
     def run(self) -> list[Group]:
         g = self.g
-        self._azides()
-        self._special_nitrogen()
-        self._sulfur_phosphorus_oxides()
+        elements = set(g.numbers)
+        if 7 in elements:
+            self._azides()
+            self._special_nitrogen()
+        if not elements.isdisjoint((15, 16, 34)):
+            self._sulfur_phosphorus_oxides()
         self._carbonyls()
-        self._amidines()
+        if 7 in elements:
+            self._amidines()
         for a, number in enumerate(g.numbers):
             if not self.claimed[a] and not g.aromatic[a] and number not in (1, 6):
                 self._lone_heteroatom(a, number)
@@ -157,7 +161,7 @@ class _Perception:
         g = self.g
         carbonyls = []
         for a, number in enumerate(g.numbers):
-            if number != 6 or self.claimed[a]:
+            if number != 6 or self.claimed[a] or 2.0 not in g.orders[a]:
                 continue
             for b, order in zip(g.neighbours[a], g.orders[a], strict=True):
                 if order == 2.0 and g.numbers[b] in (8, 16, 34) and not self.claimed[b]:
@@ -197,7 +201,7 @@ class _Perception:
     def _amidines(self) -> None:
         g = self.g
         for a, number in enumerate(g.numbers):
-            if number != 6 or self.claimed[a] or g.aromatic[a]:
+            if number != 6 or self.claimed[a] or g.aromatic[a] or 2.0 not in g.orders[a]:
                 continue
             imino = self.bonded(a, 7, 2.0)
             amino = [n for n in self.bonded(a, 7, 1.0) if not g.aromatic[n]]
@@ -256,7 +260,7 @@ class _Perception:
         """C=C and C#C; cumulated double bonds are one group, so that no atom order decides which pair is found."""
         g = self.g
         for a, number in enumerate(g.numbers):
-            if number != 6 or g.aromatic[a] or self.claimed[a]:
+            if number != 6 or self.claimed[a] or g.aromatic[a] or g.saturated(a):
                 continue
             run, triple = [a], False
             for x in run:

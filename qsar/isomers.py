@@ -53,18 +53,13 @@ def configurations(acid: Acid) -> tuple[list[Acid], str]:
 def _double_bonds_outside_rings(acid: Acid) -> bool:
     """Whether there is any C=C that may be E or Z; told from the graph, which is quicker than asking RDKit."""
     graph = acid.graph
-    return any(
-        2.0 in orders and graph.numbers[a] == 6 and _double_bonded_outside_ring(acid, a)
-        for a, orders in enumerate(graph.orders)
-    )
-
-
-def _double_bonded_outside_ring(acid: Acid, a: int) -> bool:
-    graph = acid.graph
-    return any(
-        order == 2.0 and graph.numbers[b] == 6 and not any(a in ring and b in ring for ring in graph.rings)
-        for b, order in zip(graph.neighbours[a], graph.orders[a], strict=True)
-    )
+    for a, orders in enumerate(graph.orders):
+        if 2.0 not in orders or graph.numbers[a] != 6:
+            continue
+        for b, order in zip(graph.neighbours[a], orders, strict=True):
+            if order == 2.0 and graph.numbers[b] == 6 and not any(a in ring and b in ring for ring in graph.rings):
+                return True
+    return False
 
 
 def _without_mirror_images(isomers: list[Acid]) -> list[Acid]:

@@ -21,12 +21,13 @@ if TYPE_CHECKING:
 
 SMILES_LISTS = frozenset((".smi", ".smiles", ".ism", ".txt"))
 MOL_FILES = frozenset((".sdf", ".sd", ".mol"))
-READABLE = "CSV, TSV, XLSX, SMI, SDF or MOL"
+PARQUET = frozenset((".parquet", ".pq"))
+READABLE = "CSV, TSV, XLSX, Parquet, SMI, SDF or MOL"
 MAX_SMILES = 10_000
 """Characters of one SMILES. An acid within the limit of 200 heavy atoms needs far fewer."""
 
 _FILE_ENDING = re.compile(
-    r"\.(csv|tsv|tab|txt|smi|smiles|ism|sdf|sd|mol|mol2|xlsx|xlsm|xls|ods|json|parquet|pdf|docx?|xml|html?|"
+    r"\.(csv|tsv|tab|txt|smi|smiles|ism|sdf|sd|mol|mol2|xlsx|xlsm|xls|ods|json|parquet|pq|pdf|docx?|xml|html?|"
     r"cdxml?|rdf|pdb|py|gz|zip|bz2|xz|7z)$",
     re.IGNORECASE,
 )
@@ -134,6 +135,13 @@ def count_records(sources: Sequence[str]) -> int | None:
             return None
         if not is_file_name(source):
             total += 1
+        elif path.suffix.lower() in PARQUET:
+            from qsar.parquet import count_rows
+
+            rows = count_rows(path)
+            if rows is None:
+                return None
+            total += rows
         elif path.is_file():
             mark = b"$$$$" if path.suffix.lower() in MOL_FILES else b"\n"
             total += _count(path, mark) - (path.suffix.lower() in TEXT_TABLES)
@@ -161,6 +169,8 @@ def _read_file(path: Path, on_note: Note) -> Iterator[Record]:
 
         if kind in TEXT_TABLES or kind in WORKBOOKS:
             yield from _at_least_one(_read_table(path, note))
+        elif kind in PARQUET:
+            yield from _at_least_one(_read_parquet(path))
         elif kind in MOL_FILES:
             from qsar.molfiles import read_mol_file
 
@@ -210,6 +220,19 @@ def _read_table(path: Path, note: Note) -> Iterator[Record]:
                 continue
             identity = next((row.cells[i] for i in labels if row.cells[i]), str(position))
             yield _record(identity, row.cells[column], where)
+
+
+def _read_parquet(path: Path) -> Iterator[Record]:
+    from qsar.parquet import columns_of, read_columns
+
+    columns = columns_of(path)
+    by_name = {name.strip().casefold(): name for name in reversed(columns)}
+    if "smiles" not in by_name:
+        raise UserError(f"no column smiles among its columns ({_listed(columns)}); rename one")
+    labels = [by_name[name] for name in ("id", "name") if name in by_name]
+    for position, (smiles, *given) in enumerate(read_columns(path, [by_name["smiles"], *labels]), start=1):
+        identity = next((text for text in given if text), str(position))
+        yield _record(identity, smiles, f"{path.name}, row {position}")
 
 
 def _listed(columns: Sequence[str], limit: int = 8) -> str:

@@ -97,20 +97,24 @@ def read_acid(smiles: str) -> Acid:
 
 
 # SMILES on which standardising has nothing to do: one part, no isotopes, no labels, no explicit hydrogens, no charges
-# but those of nitro groups. Nine structures of ten are written so, and take a third of the time.
+# but those of nitro groups. Most structures are written so, and take a third of the time.
 _PLAIN = re.compile(
     r"(?:Cl|Br|[BCNOPSFIbcnops]|[()=#/\\\d-]|%\d\d|\[nH\]|\[C@@?H?\]|\[N\+\]\(=O\)\[O-\]|\[N\+\]\(\[O-\]\)=O"
     r"|O=\[N\+\]\(\[O-\]\)|\[O-\]\[N\+\]\(=O\))+"
 )
 
 
-def _plain_parameters() -> Chem.SmilesParserParams:
+def _plain_parameters(*, sanitize: bool) -> Chem.SmilesParserParams:
     params = Chem.SmilesParserParams()
     params.removeHs = params.parseName = params.allowCXSMILES = False  # type: ignore[assignment]
+    params.sanitize = sanitize  # type: ignore[assignment]
     return params
 
 
-_PLAIN_PARAMETERS = _plain_parameters()
+_WITH_STEREO, _WITHOUT_STEREO = _plain_parameters(sanitize=True), _plain_parameters(sanitize=False)
+# What a canonical SMILES does not depend on.
+_NOT_FOR_SMILES = Chem.SanitizeFlags.SANITIZE_SETCONJUGATION | Chem.SanitizeFlags.SANITIZE_SETHYBRIDIZATION
+_FOR_SMILES = int(Chem.SanitizeFlags.SANITIZE_ALL) & ~int(_NOT_FOR_SMILES)
 
 
 def _plain_acid(text: str) -> Acid | None:
@@ -118,19 +122,33 @@ def _plain_acid(text: str) -> Acid | None:
 
     What is wrong is found, and said, by the general way through :func:`acid_from_mol`.
     """
-    mol = Chem.MolFromSmiles(text, _PLAIN_PARAMETERS)
+    stereo = "@" in text or "/" in text or "\\" in text
+    mol = _plain_mol(text, stereo, _FOR_SMILES)
     if mol is None or not 0 < mol.GetNumAtoms() <= MAX_HEAVY_ATOMS:
         return None
-    if "[" in text and any(atom.GetNumRadicalElectrons() for atom in mol.GetAtoms()):
+    if "[C" in text and any(mol.GetAtomWithIdx(a).GetNumRadicalElectrons() for a in range(mol.GetNumAtoms())):
         return None
     smiles = Chem.MolToSmiles(mol)
-    if smiles != text:
-        mol = Chem.MolFromSmiles(smiles, _PLAIN_PARAMETERS)  # canonical atom order, as in `acid_from_mol`
-        if mol is None:
-            return None
-        if "@" in smiles or "/" in smiles:  # writing what was read may settle stereo marks once more
-            smiles = Chem.MolToSmiles(mol)
+    if smiles == text and not stereo:
+        Chem.SetConjugation(mol)
+        Chem.SetHybridization(mol)
+    else:
+        mol = _plain_mol(smiles, stereo)  # canonical atom order, as in `acid_from_mol`
+    if mol is None:
+        return None
+    if stereo:  # writing what was read may settle stereo marks once more
+        smiles = Chem.MolToSmiles(mol)
     return Acid(smiles, mol, _carboxyl_sites(mol))
+
+
+def _plain_mol(text: str, stereo: bool, steps: int = int(Chem.SanitizeFlags.SANITIZE_ALL)) -> Chem.Mol | None:
+    """Parse a SMILES; where it states no configuration, what concerns that is left out."""
+    if stereo:
+        return Chem.MolFromSmiles(text, _WITH_STEREO)
+    mol = Chem.MolFromSmiles(text, _WITHOUT_STEREO)
+    if mol is None or Chem.SanitizeMol(mol, steps, catchErrors=True) != Chem.SanitizeFlags.SANITIZE_NONE:
+        return None
+    return mol
 
 
 def acid_from_mol(mol: Chem.Mol) -> Acid:
@@ -279,7 +297,8 @@ def _carboxyl_sites(mol: Chem.Mol) -> tuple[int, ...]:
     sites: list[int] = []
     wrong: list[str] = []
     for carbon, _, _ in mol.GetSubstructMatches(_ANY_CARBOXYL):
-        others = [n for n in mol.GetAtomWithIdx(carbon).GetNeighbors() if n.GetAtomicNum() != 8 or n.GetDegree() > 1]
+        neighbours = mol.GetAtomWithIdx(carbon).GetNeighbors()
+        others = [n for n in neighbours if n.GetAtomicNum() != 8 or n.GetDegree() > 1]
         bare = not others and mol.GetAtomWithIdx(carbon).GetTotalNumHs() == 1
         if bare or (others and others[0].GetAtomicNum() == 6):
             if carbon not in sites:

@@ -279,11 +279,18 @@ class XlsxWriter:
             self._sheet.close()
 
 
+def _parquet_writer(path: Path) -> RowWriter:
+    from qsar.parquet import ParquetWriter  # needs a package that not everyone has
+
+    return ParquetWriter(path)
+
+
 WRITERS: dict[str, Callable[[Path], RowWriter]] = {
     ".csv": CsvWriter,
     ".xlsx": XlsxWriter,
     ".json": JsonWriter,
     ".sdf": SdfWriter,
+    ".parquet": _parquet_writer,
 }
 
 

@@ -23,6 +23,11 @@ def pytest_addoption(parser: pytest.Parser) -> None:
         help="folder with measured pKa rows that the project may not hold (default: QSAR_OPEN_DATA, else "
         "../shared/open_data beside the checkout); tests that need them are skipped where it is absent",
     )
+    parser.addoption("--benchmarks", action="store_true", help="make the measurements of tests/benchmarks")
+    parser.addoption(
+        "--structures", type=int, default=15_000, metavar="N", help="structures of the speed measurement (15000)"
+    )
+    parser.addoption("--plots", metavar="DIR", help="where measurements leave their plots (default: reports/)")
 
 
 @pytest.fixture(scope="session")

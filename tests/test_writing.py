@@ -162,7 +162,7 @@ def test_interrupted_csv_keeps_whole_inputs_only(tmp_path: Path) -> None:
 
 
 def test_unknown_format_is_one_line() -> None:
-    with pytest.raises(UserError, match=r"\.csv, \.json, \.sdf, \.xlsx"):
+    with pytest.raises(UserError, match=r"\.csv, \.json, \.parquet, \.sdf, \.xlsx"):
         writer_for(Path("out.doc"))
 
 

@@ -41,8 +41,8 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         help="groups parted by blanks, by name (CF3) or SMILES with * (*C#N), or a file with one a line "
         "(default: all that have tabulated constants)",
     )
-    parser.add_argument("--low", type=float, metavar="PKA", help="only those whose interval reaches above this")
-    parser.add_argument("--high", type=float, metavar="PKA", help="only those whose interval reaches below this")
+    parser.add_argument("--low", type=float, metavar="PKA", help="only those whose pKa is not below this")
+    parser.add_argument("--high", type=float, metavar="PKA", help="only those whose pKa is not above this")
     parser.add_argument("--step", type=int, default=1, metavar="K", help="step that sorts and filters (default: 1)")
     parser.add_argument(
         "--coverage",

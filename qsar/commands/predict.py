@@ -39,7 +39,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         "--output",
         type=Path,
         metavar="FILE",
-        help="write a .csv, .xlsx, .json or .sdf instead of a table on the screen; in a .csv an id that a "
+        help="write a .csv, .xlsx, .json, .sdf or .parquet instead of a table on the screen; in a .csv an id that a "
         "spreadsheet would take for a formula gets an apostrophe in front",
     )
     parser.add_argument(
@@ -53,6 +53,11 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         "--model", type=Path, metavar="FOLDER", help="folder of another model than the shipped one"
     )
     parser.add_argument("--jobs", type=jobs, default=1, metavar="N", help="number of processes (default: 1)")
+    parser.add_argument(
+        "--cluster",
+        metavar="ADDRESS",
+        help="work on a running Dask cluster instead, such as tcp://host:8786 (needs the package distributed)",
+    )
     parser.add_argument(
         "--resume", action="store_true", help="go on with a .csv that an interrupt cut short (FILE.partial)"
     )
@@ -166,6 +171,7 @@ def _answers(args: argparse.Namespace, records: Iterator[Record]) -> Iterator[li
         functools.partial(open_model, args.model),
         coverage=args.coverage,
         jobs=args.jobs,
+        cluster=args.cluster,
         debug=args.debug,
     )
 

@@ -98,7 +98,8 @@ def run(args: argparse.Namespace) -> int:
         date_header=False,
         timeout_keep_alive=30,
         timeout_graceful_shutdown=3,
-        h11_max_incomplete_event_size=1 << 17,
+        http="h11",
+        h11_max_incomplete_event_size=1 << 18,  # an address may hold a long SMILES
     )
     uvicorn.Server(config).run(sockets=[listener])
     return 0

@@ -61,6 +61,11 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         help="members of the ensemble, each blind to one share of the acids (default: 10); fewer train faster",
     )
     parser.add_argument(
+        "--cluster",
+        metavar="ADDRESS",
+        help="fit the folds on a running Dask cluster, such as tcp://host:8786 (needs the package distributed)",
+    )
+    parser.add_argument(
         "--withhold-structures",
         action="store_true",
         help="keep structures and names of the training acids out of the bundle; neighbours then show as values only",
@@ -200,7 +205,13 @@ def _train(args: argparse.Namespace, inputs: _Inputs, settings: Settings, name: 
     data = training_set(inputs.measurements, weights_of(inputs.measurements))
     with progress(lambda: settings.folds, "folds", wanted=True) as done:
         members, fold = fit_members_resumably(
-            data, settings, cache, done, lambda t: say(f"acidity: note: {t}"), inputs.reference_acids
+            data,
+            settings,
+            cache,
+            done,
+            lambda t: say(f"acidity: note: {t}"),
+            inputs.reference_acids,
+            args.cluster,
         )
     return assemble(data, members, fold, name, _provenance(args, inputs), withhold_structures=args.withhold_structures)
 

@@ -124,8 +124,8 @@ class Surroundings:
     """
 
     def __init__(self, molecule: Molecule, site: int) -> None:
-        self.molecule = molecule
         self.graph = graph = molecule.graph
+        self.unsaturated = molecule.unsaturated
         own = molecule.carboxyls[site].atoms
         self.own = frozenset(own)
         blocked = frozenset(own[1:])
@@ -143,7 +143,7 @@ class Surroundings:
 
     def _through_pi(self) -> list[bool]:
         """For each atom, whether all shortest paths to it cross an unsaturated atom (itself not counted)."""
-        neighbours, dist, unsaturated = self.graph.neighbours, self.distance, self.molecule.unsaturated
+        neighbours, dist, unsaturated = self.graph.neighbours, self.distance, self.unsaturated
         flags = [False] * len(dist)
         for a in sorted((x for x, d in enumerate(dist) if d > 1), key=dist.__getitem__):
             before = dist[a] - 1
@@ -169,7 +169,7 @@ class Surroundings:
                 kind = "acylthio" if number in (16, 34) and kind == "ester" else by_oxygen
         elif kind in ("ether", "sulfide"):
             far = [b for b in graph.neighbours[anchor] if dist[b] > dist[anchor]]
-            aryl = any(self.molecule.unsaturated[b] for b in far)
+            aryl = any(self.unsaturated[b] for b in far)
             kind = {
                 ("ether", True): "aryloxy",
                 ("ether", False): "alkoxy",

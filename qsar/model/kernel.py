@@ -16,9 +16,13 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from qsar.model.inducing import MOST_EXACT, basis, fit
+
 Floats = NDArray[np.float64]
 
 LEAST_DEVIATION = 0.2
+_OFFSET = 4.5  # pKa units; where the trend begins
+_RIDGE = 0.05
 CLIP = 15.0  # scaled descriptors beyond this many standard deviations are taken as that far out, no further
 
 
@@ -137,8 +141,29 @@ class KernelTrend:
         return result
 
 
+def basis_points(free: Floats, settings: KernelSettings, scaling: Scaling) -> Floats:
+    """Scaled points that trends of these training edges are sums over; see :mod:`qsar.model.inducing`.
+
+    Parameters
+    ----------
+    free : ndarray, shape (n, n_free)
+
+    Returns
+    -------
+    ndarray, shape (m, n_free)
+        All of them where there are few enough for an exact fit.
+    """
+    return basis(scaling(free), lambda a, b: covariance(a, b, settings))
+
+
 def fit_trend(
-    free: Floats, lowers: Floats, target: Floats, variance: Floats, settings: KernelSettings, scaling: Scaling
+    free: Floats,
+    lowers: Floats,
+    target: Floats,
+    variance: Floats,
+    settings: KernelSettings,
+    scaling: Scaling,
+    points: Floats | None = None,
 ) -> KernelTrend:
     """Fit a trend.
 
@@ -151,20 +176,40 @@ def fit_trend(
         Variance of each target, pKa units squared.
     settings : KernelSettings
     scaling : Scaling
+    points : ndarray, shape (m, n_free), optional
+        From `basis_points`: the trend is fitted over these alone. Without them the fit is exact for up to
+        `MOST_EXACT` edges, and beyond over points chosen among the edges.
 
     Returns
     -------
     KernelTrend
     """
+    if points is None and len(free) > MOST_EXACT:
+        points = basis_points(free, settings, scaling)
+    if points is not None:
+        return _fit_over(points, scaling(free), lowers, target, variance, settings, scaling)
     from scipy.linalg import cho_solve, cholesky, solve_triangular
     from scipy.optimize import nnls
 
     points = scaling(free)
-    offset = 4.5
     lower = cholesky(covariance(points, points, settings) + np.diag(variance + settings.noise**2), lower=True)
-    whitened = solve_triangular(lower, np.column_stack([-lowers, target - offset]), lower=True)
+    whitened = solve_triangular(lower, np.column_stack([-lowers, target - _OFFSET]), lower=True)
     # A very small ridge keeps the weights of nearly equal columns from hopping between folds.
-    ridge = 0.05 * np.eye(lowers.shape[1])
+    ridge = _RIDGE * np.eye(lowers.shape[1])
     slopes, _ = nnls(np.vstack([whitened[:, :-1], ridge]), np.append(whitened[:, -1], np.zeros(len(ridge))))
-    dual = cho_solve((lower, True), target - offset + lowers @ slopes)
-    return KernelTrend(settings, scaling, points, dual, slopes, offset)
+    dual = cho_solve((lower, True), target - _OFFSET + lowers @ slopes)
+    return KernelTrend(settings, scaling, points, dual, slopes, _OFFSET)
+
+
+def _fit_over(
+    points: Floats,
+    edges: Floats,
+    lowers: Floats,
+    target: Floats,
+    variance: Floats,
+    settings: KernelSettings,
+    scaling: Scaling,
+) -> KernelTrend:
+    cross, among = covariance(edges, points, settings), covariance(points, points, settings)
+    dual, slopes = fit(cross, among, lowers, target - _OFFSET, variance + settings.noise**2, _RIDGE)
+    return KernelTrend(settings, scaling, points, dual, slopes, _OFFSET)

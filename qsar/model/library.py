@@ -53,6 +53,10 @@ class Library:
                 table.setdefault(_canonical(smiles.replace("@", "")), table[smiles])
         return table
 
+    @cached_property
+    def _atoms(self) -> set[str]:
+        return {_atoms_of(smiles) for smiles in self._rows}
+
     def rows_of(self, smiles: str) -> dict[int, int]:
         """Row of each measured step of an acid, by step; empty where it was not measured.
 
@@ -65,7 +69,7 @@ class Library:
         table = self._rows
         if smiles in table:
             return table[smiles]
-        if "@" not in smiles:
+        if "@" not in smiles or _atoms_of(smiles) not in self._atoms:
             return {}
         mirrored = _canonical(smiles.replace("@@", "\0").replace("@", "@@").replace("\0", "@"))
         if mirrored in table:
@@ -75,6 +79,11 @@ class Library:
     def label(self, row: int) -> str:
         """What to call the acid of a row: its name, else its structure, else its value."""
         return self.name[row] or self.smiles[row] or f"an acid of pKa {self.pka[row]:.2f}"
+
+
+def _atoms_of(smiles: str) -> str:
+    """What all drawings of one constitution have in common, told without parsing: its heavy atoms."""
+    return "".join(sorted(c for c in smiles if c.isalpha() and c != "H"))
 
 
 def _canonical(smiles: str) -> str:

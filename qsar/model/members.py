@@ -14,7 +14,8 @@ from numpy.typing import NDArray
 
 from qsar.descriptors import LOWERS
 from qsar.model.boosting import BoostingSettings, Trees, fit_booster, trees_of
-from qsar.model.kernel import KernelSettings, KernelTrend, Scaling, covariance, fit_trend
+from qsar.model.inducing import MOST_EXACT
+from qsar.model.kernel import KernelSettings, KernelTrend, Scaling, basis_points, covariance, fit_trend
 from qsar.model.training_set import Targets, TrainingSet, latent_targets
 
 Floats = NDArray[np.float64]
@@ -58,7 +59,7 @@ class Members:
     settings : Settings
     scaling : Scaling
     points : ndarray, shape (n_points, n_free)
-        Scaled free descriptors of the training edges.
+        Scaled free descriptors of the training edges, of large tables a part of them.
     dual : ndarray, shape (n_members, n_points)
     slopes : ndarray, shape (n_members, n_lowers)
     offset : float
@@ -134,6 +135,7 @@ def _converged_trend(
 ) -> tuple[KernelTrend, Targets]:
     """Trend and latent micro constants after `settings.rounds` rounds of each other."""
     free, lowers = data.x[:, ~LOWERS], data.x[:, LOWERS]
+    points = _few_points(data, scaling, settings)
     micro = np.full(len(data.x), START_NEUTRAL)
     targets = latent_targets(data, micro, wanted)
     for _ in range(settings.rounds):
@@ -144,13 +146,21 @@ def _converged_trend(
             targets.variance,
             settings.kernel,
             scaling,
+            points,
         )
         micro = trend.predict(free, lowers)
         targets = latent_targets(data, micro, wanted)
     trend = fit_trend(
-        free[targets.edge], lowers[targets.edge], targets.value, targets.variance, settings.kernel, scaling
+        free[targets.edge], lowers[targets.edge], targets.value, targets.variance, settings.kernel, scaling, points
     )
     return trend, targets
+
+
+def _few_points(data: TrainingSet, scaling: Scaling, settings: Settings) -> Floats | None:
+    """The points of the trend where there are too many edges for an exact fit."""
+    if len(data.x) <= MOST_EXACT:
+        return None
+    return basis_points(data.x[:, ~LOWERS], settings.kernel, scaling)
 
 
 def trend_without(data: TrainingSet, members: Members, wanted: NDArray[np.bool_]) -> Floats:
@@ -168,6 +178,7 @@ def _fit_member(
 ) -> Member:
     free, lowers = data.x[:, ~LOWERS], data.x[:, LOWERS]
     trend, targets = _converged_trend(data, scaling, wanted, settings)
+    points = trend.points if len(data.x) > MOST_EXACT else None
     residual = np.empty(len(targets.edge))
     rng = np.random.default_rng(seed)
     inner = rng.integers(settings.inner_folds, size=len(data.acids))[data.owner[targets.edge]]
@@ -177,11 +188,13 @@ def _fit_member(
             residual[held] = 0.0
             continue
         other = fit_trend(
-            free[rest], lowers[rest], targets.value[~held], targets.variance[~held], settings.kernel, scaling
+            free[rest], lowers[rest], targets.value[~held], targets.variance[~held], settings.kernel, scaling, points
         )
         residual[held] = targets.value[held] - other.predict(free[targets.edge[held]], lowers[targets.edge[held]])
     residual = np.clip(residual, -settings.largest_residual, settings.largest_residual)
     booster = fit_booster(data.x[targets.edge], residual, targets.share, LOWERS, settings.boosting, seed)
+    if points is not None:
+        return Member(trend.dual, trend.slopes, trend.offset, booster)
     dual = np.zeros(len(data.x))
     np.add.at(dual, targets.edge, trend.dual)
     return Member(dual, trend.slopes, trend.offset, booster)
@@ -230,7 +243,7 @@ def join_members(data: TrainingSet, scaling: Scaling, fitted: Sequence[Member], 
     return Members(
         settings,
         scaling,
-        scaling(data.x[:, ~LOWERS]),
+        basis_points(data.x[:, ~LOWERS], settings.kernel, scaling),
         np.array([m.dual for m in fitted]),
         np.array([m.slopes for m in fitted]),
         fitted[0].offset,

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+import gc
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Any
 
@@ -12,14 +14,14 @@ from numpy.typing import NDArray
 from qsar.advisories import advise
 from qsar.descriptors import SiteView, site_descriptors
 from qsar.errors import UserError
-from qsar.ionisation import closure_defect, cube, edge_views, macroscopic
+from qsar.ionisation import edge_views
 from qsar.isomers import configurations
 from qsar.model.domain import VERDICTS, Domain, has_cation
 from qsar.model.intervals import Calibration
 from qsar.model.library import Library
 from qsar.model.members import Members
 from qsar.model.neighbours import Neighbours, nearest
-from qsar.model.training_set import dominant_edges
+from qsar.model.network_steps import steps_of
 from qsar.notebook import Predictions
 from qsar.structures import Acid, StructureError, read_acid
 
@@ -28,6 +30,7 @@ if TYPE_CHECKING:
 
 Floats = NDArray[np.float64]
 _NEAR = 5
+_AT_ONCE = 128  # acids; the matrices between them and the measured steps then stay in the processor's cache
 
 
 @dataclass(frozen=True)
@@ -104,55 +107,19 @@ class _Case:
 
 def _case(acid: Acid) -> _Case:
     views = edge_views(acid)
-    return _Case(acid, views, np.array([site_descriptors(view) for view in views]))
+    return _Case(acid, views, np.array([site_descriptors(view) for view in views], dtype=np.float64))
 
 
-@dataclass(frozen=True)
-class _Steps:
-    """The steps of all cases, case by case; all arrays but `by_member` have shape (n_steps,).
-
-    Attributes
-    ----------
-    case, step, edge : ndarray of int
-        Case, step from 1, and the edge that carries most of its flux.
-    pka, defect : ndarray
-        The whole model's pKa, and by how much the case's network misses closing.
-    by_member : ndarray, shape (n_members, n_steps)
-        Each member's pKa.
-    """
-
-    case: NDArray[np.int64]
-    step: NDArray[np.int64]
-    edge: NDArray[np.int64]
-    pka: Floats
-    defect: Floats
-    by_member: Floats
-
-
-def _steps_of(sites: list[int], micro: Floats) -> _Steps:
-    """Steps of cases with so many sites from the micro pKa (n_members, n_edges) of all their edges, in order."""
-    counts = np.array(sites)
-    first = np.concatenate([[0], np.cumsum([len(cube(n).start) for n in sites])])
-    mean = micro.mean(axis=0)
-    parts: list[tuple[NDArray[Any], ...]] = []
-    for n in sorted(set(sites)):  # cases with the same number of sites together
-        own = np.flatnonzero(counts == n)
-        edges = first[own][:, None] + np.arange(len(cube(n).start))
-        local = dominant_edges(mean[edges], n)
-        defect = closure_defect(mean[edges], n) if n > 1 else np.zeros(len(own))
-        parts.append(
-            (
-                np.repeat(own, n),
-                np.tile(np.arange(1, n + 1), len(own)),
-                (first[own][:, None] + local).ravel(),
-                macroscopic(mean[edges], n).ravel(),
-                np.repeat(defect, n),
-                macroscopic(micro[:, edges], n).reshape(len(micro), -1),
-            )
-        )
-    joined = [np.concatenate(same, axis=-1) for same in zip(*parts, strict=True)]
-    order = np.argsort(joined[0], kind="stable")
-    return _Steps(*(part[..., order] for part in joined))
+@contextmanager
+def _no_collection() -> Iterator[None]:
+    """Spare Python the search for cycles: a chunk makes many small objects, and none that refers back to itself."""
+    enabled = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if enabled:
+            gc.enable()
 
 
 @dataclass(frozen=True, eq=False)
@@ -214,6 +181,13 @@ class Model:
         """
         if not 0.5 <= coverage <= 0.99:
             raise UserError(f"coverage {coverage:g} is out of range; give a fraction from 0.5 to 0.99")
+        results: list[Prediction] = []
+        with _no_collection():
+            for start in range(0, len(acids), _AT_ONCE):
+                results += self._predict(acids[start : start + _AT_ONCE], coverage)
+        return results
+
+    def _predict(self, acids: Sequence[str | Acid | StructureError], coverage: float) -> list[Prediction]:
         results: list[Prediction | None] = [None] * len(acids)
         cases: list[_Case] = []
         places: list[tuple[int, list[int], str]] = []
@@ -242,7 +216,7 @@ class Model:
     def _predict_cases(self, cases: list[_Case], coverage: float) -> list[list[StepPrediction]]:
         all_x = np.vstack([case.x for case in cases])
         trend, boosted = self.members.predict(all_x)
-        rows = _steps_of([len(case.acid.sites) for case in cases], trend + boosted)
+        rows = steps_of([len(case.acid.sites) for case in cases], trend + boosted)
         first = np.concatenate([[0], np.cumsum([len(case.x) for case in cases])])
         x = all_x[rows.edge]
         views = [cases[c].views[e - first[c]] for c, e in zip(rows.case, rows.edge, strict=True)]

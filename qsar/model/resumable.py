@@ -8,6 +8,7 @@ import shutil
 import zipfile
 from collections.abc import Callable, Sequence
 from dataclasses import replace
+from functools import partial
 from pathlib import Path
 from typing import Any
 
@@ -19,7 +20,7 @@ from qsar.errors import UserError
 from qsar.files import atomic_path
 from qsar.model.boosting import Trees, trees_of
 from qsar.model.bundle import settings_to
-from qsar.model.kernel import Scaling
+from qsar.model.kernel import Scaling, basis_points
 from qsar.model.members import Members, Settings, fit_member, fold_of_acids
 from qsar.model.training_set import Ints, TrainingSet
 
@@ -71,6 +72,7 @@ def fit_members_resumably(
     done: Callable[[int], object] = lambda _: None,
     note: Callable[[str], None] = lambda _: None,
     first_part: int | None = None,
+    cluster: str | None = None,
 ) -> tuple[Members, Ints]:
     """Fit the ensemble as :func:`qsar.model.members.fit_members` does, member by member through a cache.
 
@@ -87,6 +89,8 @@ def fit_members_resumably(
         Told, in one line, what was found.
     first_part : int, optional
         Acids, at the beginning, whose folds are dealt out apart; see `deal_folds`.
+    cluster : str, optional
+        Address of a Dask scheduler: the folds are fitted there.
 
     Returns
     -------
@@ -94,39 +98,49 @@ def fit_members_resumably(
     fold : ndarray of int, shape (n_acids,)
         Member that never saw each acid.
     """
-    import scipy.linalg  # noqa: F401 - loaded first, or the limit to one thread in `fit_member` does not reach it
-
     fold = deal_folds(len(data.acids), settings, first_part)
     scaling = Scaling.of(data.x[:, ~LOWERS])
     key = fingerprint(data, settings, fold)[:24]
-    fitted: list[Arrays] = []
-    found = 0
-    for k in range(settings.folds):
-        path = cache / f"{key}-{k}.npz"
-        arrays = _read(path, note)
-        if arrays is None:
-            member = fit_member(data, scaling, fold[data.step_acid] != k, settings, settings.seed + 1000 * k)
-            trees = trees_of([member.booster])
-            arrays = {name: getattr(trees, name) for name in _TREES}
-            arrays |= {"dual": member.dual, "slopes": member.slopes}
-            arrays |= {"offset": np.array(member.offset), "depth": np.array(trees.depth)}
-            _write(path, arrays, note)
-        else:
-            found += 1
-        fitted.append(arrays)
+    paths = [cache / f"{key}-{k}.npz" for k in range(settings.folds)]
+    stored = [_read(path, note) for path in paths]
+    missing = [k for k, arrays in enumerate(stored) if arrays is None]
+    found = settings.folds - len(missing)
+    for _ in range(found):
         done(1)
+    fit = partial(_fit, data, scaling, fold, settings)
+    fresh = map(fit, missing)
+    if cluster is not None:
+        from qsar.cluster import in_order
+
+        fresh = in_order(cluster, fit, missing)  # type: ignore[assignment]
+    for k, arrays in zip(missing, fresh, strict=True):
+        _write(paths[k], arrays, note)
+        stored[k] = arrays
+        done(1)
+    fitted = [arrays for arrays in stored if arrays is not None]
     if found:
         note(f"{found} of {settings.folds} folds were finished by an earlier run and taken from {cache}")
     members = Members(
         settings,
         scaling,
-        scaling(data.x[:, ~LOWERS]),
+        basis_points(data.x[:, ~LOWERS], settings.kernel, scaling),
         np.array([a["dual"] for a in fitted]),
         np.array([a["slopes"] for a in fitted]),
         float(fitted[0]["offset"]),
         join_trees(fitted),
     )
     return members, fold
+
+
+def _fit(data: TrainingSet, scaling: Scaling, fold: Ints, settings: Settings, k: int) -> Arrays:
+    """Member `k` as plain arrays."""
+    import scipy.linalg  # noqa: F401 - loaded first, or the limit to one thread in `fit_member` does not reach it
+
+    member = fit_member(data, scaling, fold[data.step_acid] != k, settings, settings.seed + 1000 * k)
+    trees = trees_of([member.booster])
+    arrays = {name: getattr(trees, name) for name in _TREES}
+    arrays |= {"dual": member.dual, "slopes": member.slopes}
+    return arrays | {"offset": np.array(member.offset), "depth": np.array(trees.depth)}
 
 
 def _read(path: Path, note: Callable[[str], None]) -> Arrays | None:

@@ -16,6 +16,7 @@ from qsar.errors import UserError
 from qsar.ionisation import cube
 from qsar.model.bundle import KIND, SCHEMA, settings_to
 from qsar.model.domain import Domain
+from qsar.model.inducing import MOST_EXACT
 from qsar.model.intervals import Calibration, fit_scale
 from qsar.model.library import Library
 from qsar.model.members import Members, Settings, fit_members, out_of_fold, trend_without
@@ -25,6 +26,7 @@ from qsar.model.training_set import Floats, Ints, TrainingSet, training_set
 from qsar.table import Measurement
 
 STRANGER_FOLDS = 5
+_ROWS_AT_ONCE = 500  # steps of a large table whose distances to all others are held together
 ANALOGUE_DISTANCE = 0.2  # pKa units; acids this close are homologues or differ in a remote group
 
 
@@ -101,20 +103,16 @@ def assemble(
     domain = Domain.of(by_acid.values(), np.ones(1))
     error = np.abs(data.pka - without)
     step_fold = fold[data.step_acid]
-    distances = neighbours.distances(members, x)
     sparse = np.array([domain.sparse(view, less=1) for view in views])
-    evidence = evidence_of(
-        _hidden(distances, step_fold), error, np.abs(boosted[dominant]), _defects(data, micro), sparse
-    )
+    correction_size = np.abs(boosted[dominant])
+
+    def evidence_without(step_fold: Ints, defect: Floats) -> Floats:
+        return _evidence_without(members, neighbours, x, step_fold, error, correction_size, defect, sparse)
+
+    evidence = evidence_without(step_fold, _defects(data, micro))
     strangers, stranger_fold = without_analogues(data, members, neighbours)
     stranger_error = np.abs(data.pka - data.steps(strangers))
-    stranger_evidence = evidence_of(
-        _hidden(distances, stranger_fold[data.step_acid]),
-        error,
-        np.abs(boosted[dominant]),
-        _defects(data, strangers),
-        sparse,
-    )
+    stranger_evidence = evidence_without(stranger_fold[data.step_acid], _defects(data, strangers))
     coefficients = fit_scale(np.vstack([evidence, stranger_evidence]), np.concatenate([error, stranger_error]))
     label = np.array(
         [
@@ -145,9 +143,25 @@ def assemble(
     return Model(card, members, neighbours, calibration, domain, library)
 
 
-def _hidden(distances: Floats, fold: Ints) -> Floats:
-    """Distances as if the whole fold of each step had not been measured; `fold` has shape (n_steps,)."""
-    return np.where(fold[:, None] == fold[None], np.inf, distances)
+def _evidence_without(
+    members: Members,
+    neighbours: Neighbours,
+    x: Floats,
+    fold: Ints,
+    error: Floats,
+    boosted: Floats,
+    defect: Floats,
+    sparse: Floats,
+) -> Floats:
+    """Evidence of each measured step as if its whole fold had not been measured; `fold` has shape (n_steps,)."""
+    size = len(x) if len(x) <= MOST_EXACT else _ROWS_AT_ONCE
+    parts = []
+    for start in range(0, len(x), size):
+        own = slice(start, start + size)
+        distances = neighbours.distances(members, x[own])
+        distances[fold[own][:, None] == fold[None]] = np.inf
+        parts.append(evidence_of(distances, error, boosted[own], defect[own], sparse[own]))
+    return np.vstack(parts)
 
 
 def without_analogues(data: TrainingSet, members: Members, neighbours: Neighbours) -> tuple[Floats, Ints]:

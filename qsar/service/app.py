@@ -18,11 +18,11 @@ from starlette.exceptions import HTTPException
 
 from qsar import __version__
 from qsar.service import schemas as s
-from qsar.service.exports import MEDIA, report_page, table_file
+from qsar.service.exports import MEDIA, report_page
 from qsar.service.guard import Guard
 from qsar.service.settings import Refused, Settings
 from qsar.service.streaming import Plain, predict_part, stream
-from qsar.service.workers import Workers
+from qsar.service.workers import TimeExceeded, Workers
 from qsar.writing import Row
 
 V1 = "/api/v1"
@@ -107,8 +107,7 @@ async def _on_invalid(request: Request, problem: Exception) -> JSONResponse:
     first = problem.errors()[0]
     where = ".".join(str(part) for part in first.get("loc", ())[1:])[:120]
     said = "".join(c if c.isprintable() else "?" for c in f"{where}: {first.get('msg', 'cannot be read')}")
-    status = 413 if first.get("type") in ("string_too_long", "too_long") else 422
-    return JSONResponse({"detail": said}, status)
+    return JSONResponse({"detail": said}, 422)
 
 
 async def _on_http(request: Request, problem: Exception) -> JSONResponse:
@@ -137,6 +136,14 @@ def _add_pages(app: FastAPI, templates: Environment) -> None:
             raise HTTPException(404)
         kind = _TYPES.get(name[name.rfind(".") :], "application/octet-stream")
         return Response(assets[name], media_type=kind, headers={"cache-control": "no-cache"})
+
+
+async def explained(workers: Workers, settings: Settings, task: str, **arguments: Any) -> Any:
+    """Have a task done with contributions or, where these take too long, without."""
+    try:
+        return await workers.run(task, seconds=settings.seconds, **arguments)
+    except TimeExceeded:
+        return await workers.run(task, seconds=settings.seconds, contributions=False, **arguments)
 
 
 def _add_acids(app: FastAPI, workers: Workers, settings: Settings) -> None:
@@ -186,14 +193,14 @@ def _add_acids(app: FastAPI, workers: Workers, settings: Settings) -> None:
         return await fixed("groups")
 
     @app.get(f"{V1}/acid", response_model=s.AcidAnswer, tags=["acid"])
-    async def acid(smiles: s.Smiles, coverage: s.Coverage = 0.9, step: s.StepNumber = 1) -> Any:
+    async def acid(smiles: s.SmilesInAddress, coverage: s.Coverage = 0.9, step: s.StepNumber = 1) -> Any:
         """Everything about one acid: steps, evidence, contributions, drawing, positions."""
-        return JSONResponse(await ask("acid", smiles=smiles, coverage=coverage, step=step))
+        return JSONResponse(await explained(workers, settings, "acid", smiles=smiles, coverage=coverage, step=step))
 
     @app.post(f"{V1}/swap", response_model=s.AcidAnswer, tags=["build"])
     async def swap(question: s.SwapQuestion) -> Any:
         """Everything about the acid with another group at a place."""
-        return JSONResponse(await ask("swap", **question.model_dump()))
+        return JSONResponse(await explained(workers, settings, "swap", **question.model_dump()))
 
     @app.post(f"{V1}/analogues", response_model=s.AnaloguesAnswer, tags=["build"])
     async def analogues(question: s.AnaloguesQuestion) -> Any:
@@ -206,7 +213,7 @@ def _add_acids(app: FastAPI, workers: Workers, settings: Settings) -> None:
         f"{V1}/drawing", response_class=Response, responses={200: {"content": {"image/svg+xml": {}}}}, tags=["acid"]
     )
     async def drawing(
-        smiles: s.Smiles,
+        smiles: s.SmilesInAddress,
         width: Annotated[int, Query(ge=40, le=1000)] = 180,
         height: Annotated[int, Query(ge=40, le=1000)] = 120,
         dark: bool = False,
@@ -216,14 +223,14 @@ def _add_acids(app: FastAPI, workers: Workers, settings: Settings) -> None:
         headers = {"content-security-policy": _SVG_POLICY, "cache-control": "private, max-age=3600"}
         return Response(svg, media_type="image/svg+xml", headers=headers)
 
-    def decision(kind: str, Question: type) -> Callable[..., Any]:  # noqa: N803 - a type
+    def decision(kind: str, Question: type) -> Callable[..., Any]:
         async def answer(question: Question) -> Any:  # type: ignore[valid-type]
             return JSONResponse(await ask("decide", kind=kind, question=question.model_dump()))  # type: ignore[attr-defined]
 
         answer.__doc__ = Question.__doc__
         return answer
 
-    for kind, Question in _DECISIONS.items():  # noqa: N806 - a type
+    for kind, Question in _DECISIONS.items():
         route = decision(kind, Question)
         route.__annotations__ = {"question": Question, "return": Any}
         app.post(f"{V1}/decide/{kind}", name=f"decide_{kind}", response_model=s.DecisionAnswer, tags=["decide"])(route)
@@ -326,8 +333,8 @@ def _add_files(app: FastAPI, workers: Workers, settings: Settings, templates: En
         acids: list[dict[str, Any]] = []
         for start in range(0, len(pairs), 10):
             part = pairs[start : start + 10]
-            acids += await workers.run(
-                "report", seconds=3 * settings.seconds, background=True, smiles=part, coverage=question.coverage
+            acids += await explained(
+                workers, settings, "report", background=True, smiles=part, coverage=question.coverage
             )
         decisions = [
             await workers.run("decide", seconds=settings.seconds, kind=q.kind, question=q.model_dump())

@@ -62,7 +62,7 @@ class Guard:
             await send(message)
 
         try:
-            headers = {name: value for name, value in scope["headers"]}
+            headers = dict(scope["headers"])
             self._check_host(headers.get(b"host"))
             _check_origin(headers)
             self._check_length(headers.get(b"content-length"))

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from typing import Any
 
 from rdkit import Chem
 from rdkit.Chem import rdDepictor
@@ -16,6 +17,7 @@ from qsar.analogues import Position
 Colour = tuple[float, float, float]
 
 _DARK_PAGE: Colour = (0.086, 0.106, 0.122)
+_DARK_INK: Colour = (0.91, 0.92, 0.93)
 _STUB = 0.62  # of a bond, from the atom to the handle of its hydrogen
 
 
@@ -82,12 +84,12 @@ def _drawn(
     mol: Chem.Mol, width: int, height: int, tints: Mapping[int, float], *, dark: bool, wide: bool
 ) -> tuple[str, rdMolDraw2D.MolDraw2DSVG]:
     drawer = rdMolDraw2D.MolDraw2DSVG(width, height)
-    options = drawer.drawOptions()
+    options: Any = drawer.drawOptions()
     if dark:
         rdMolDraw2D.SetDarkMode(drawer)
     options.useBWAtomPalette()
     if dark:
-        options.updateAtomPalette({-1: (0.91, 0.92, 0.93), **{n: (0.91, 0.92, 0.93) for n in _DRAWN_ELEMENTS}})
+        options.updateAtomPalette(dict.fromkeys((-1, *_DRAWN_ELEMENTS), _DARK_INK))
     options.clearBackground = False
     options.padding = 0.13 if wide else 0.06
     options.maxFontSize = 17

@@ -10,6 +10,7 @@ from qsar.reading import MAX_SMILES
 
 Text = Annotated[str, Field(max_length=400)]
 Smiles = Annotated[str, Field(max_length=2 * MAX_SMILES, examples=["OC(=O)c1ccccc1"])]
+SmilesInAddress = Annotated[str, Field(max_length=MAX_SMILES, examples=["OC(=O)c1ccccc1"])]
 Coverage = Annotated[
     float, Field(ge=0.5, le=0.99, description="Fraction of true values that the intervals are meant to hold.")
 ]
@@ -116,8 +117,8 @@ class AnaloguesQuestion(_Taken):
         None, description="Names or SMILES with *; left out, the whole list."
     )
     step: StepNumber = 1
-    low: Number | None = Field(None, description="Only analogues whose interval reaches above this pKa.")
-    high: Number | None = Field(None, description="Only analogues whose interval reaches below this pKa.")
+    low: Number | None = Field(None, description="Only analogues whose pKa is not below this.")
+    high: Number | None = Field(None, description="Only analogues whose pKa is not above this.")
     coverage: Coverage = 0.9
 
 
@@ -159,9 +160,9 @@ class ReportQuestion(_Taken):
 
     structures: Annotated[list[Structure], Field(min_length=1)]
     coverage: Coverage = 0.9
-    decisions: Annotated[list[BaseQuestion | WindowQuestion | BufferQuestion | RiskQuestion], Field(max_length=8)] = Field(
-        default_factory=list, description="Decisions to answer in the report, each with its `kind`."
-    )
+    decisions: Annotated[
+        list[BaseQuestion | WindowQuestion | BufferQuestion | RiskQuestion], Field(max_length=8)
+    ] = Field(default_factory=list, description="Decisions to answer in the report, each with its `kind`.")
 
 
 class _Decision(_Taken):

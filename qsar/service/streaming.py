@@ -75,9 +75,8 @@ async def predict_part(
         if len(part) == 1:
             slow[0] += 1
             if slow[0] > settings.slow_rows:
-                raise Refused(
-                    503, f"stopped: more than {settings.slow_rows} structures of this list took too long or too much memory"
-                ) from reason
+                said = f"stopped: more than {settings.slow_rows} structures took too long or too much memory"
+                raise Refused(503, said) from reason
             record = Record(part[0][0], part[0][1], part[0][2])
             return [[unusable(record, reason.sentence)._asdict()]]
     middle = len(part) // 2

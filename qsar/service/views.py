@@ -42,7 +42,7 @@ def acid_view(model: Model, explained: Explained, step: int, *, for_paper: bool 
     ----------
     model : Model
     explained : Explained
-        A usable acid with its explanations.
+        A usable acid with its explanations, or without any.
     step : int
         The step whose contributions tint the drawing, from 1; held to those that there are.
     for_paper : bool
@@ -53,9 +53,10 @@ def acid_view(model: Model, explained: Explained, step: int, *, for_paper: bool 
     assert acid is not None
     record = Record("1", prediction.structure)
     notes = list(dict.fromkeys((*acid.notes, *advise(acid.mol))))
+    explanations = explained.steps or (None,) * len(prediction.steps)
     steps = [
         _step_view(row._asdict(), s, e, notes)
-        for row, s, e in zip(rows_of(record, prediction), prediction.steps, explained.steps, strict=True)
+        for row, s, e in zip(rows_of(record, prediction), prediction.steps, explanations, strict=True)
     ]
     shown = min(max(step, 1), len(steps))
     view: dict[str, Any] = {
@@ -68,7 +69,7 @@ def acid_view(model: Model, explained: Explained, step: int, *, for_paper: bool 
     }
     places = () if for_paper else positions(acid)
     size = (PAPER_WIDTH, PAPER_HEIGHT) if for_paper else (WIDTH, HEIGHT)
-    view["drawing"], view["positions"] = _drawing(acid, explained.steps[shown - 1], places, *size)
+    view["drawing"], view["positions"] = _drawing(acid, explanations[shown - 1], places, *size)
     return view
 
 
@@ -79,9 +80,10 @@ def name_of(model: Model, smiles: str) -> str:
 
 
 def _drawing(
-    acid: Acid, explanation: Explanation, places: Sequence[Position], width: int, height: int
+    acid: Acid, explanation: Explanation | None, places: Sequence[Position], width: int, height: int
 ) -> tuple[dict[str, Any], list[dict[str, Any]]]:
-    tints = {a: line.contribution for line in explanation.contributions for a in line.atoms}
+    lines = () if explanation is None else explanation.contributions
+    tints = {a: line.contribution for line in lines for a in line.atoms}
     picture = draw(acid.mol, width, height, tints=tints, positions=places)
     drawing = {"light": picture.light, "dark": picture.dark, "width": width, "height": height}
     listed = [
@@ -100,7 +102,7 @@ def _drawing(
 
 
 def _step_view(
-    row: dict[str, Any], step: StepPrediction, explanation: Explanation, notes: list[str]
+    row: dict[str, Any], step: StepPrediction, explanation: Explanation | None, notes: list[str]
 ) -> dict[str, Any]:
     """Row of the table of predictions for one step, and what stands behind it."""
     return {
@@ -120,8 +122,8 @@ def _step_view(
             }
             for n in step.neighbours
         ],
-        "parent": explanation.parent,
-        "parent_pka": explanation.parent_pka,
+        "parent": "" if explanation is None else explanation.parent,
+        "parent_pka": None if explanation is None else explanation.parent_pka,
         "contributions": [
             {
                 "substituent": c.substituent,
@@ -134,6 +136,6 @@ def _step_view(
                 "pairs_mean": c.witnesses.mean if c.witnesses.n else None,
                 "pairs_verdict": c.witnesses.verdict,
             }
-            for c in explanation.contributions
+            for c in (() if explanation is None else explanation.contributions)
         ],
     }

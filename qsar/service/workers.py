@@ -23,7 +23,7 @@ from typing import Any
 from qsar.service.settings import Refused, Settings
 
 _START_SECONDS = 120.0
-_READY, _UNUSABLE, _DONE, _REFUSED, _FAILED = range(5)
+_READY, _UNUSABLE, _DONE, _REFUSED, _FAILED, _LATE, _ENDED = range(7)
 
 
 class TimeExceeded(Refused):
@@ -140,7 +140,7 @@ class Workers:
             self._keep(self._hire())
 
     def _keep(self, work: Any) -> asyncio.Task[Any]:
-        task = asyncio.ensure_future(work)
+        task: asyncio.Task[Any] = asyncio.ensure_future(work)
         self._tasks.add(task)
         task.add_done_callback(self._tasks.discard)
         return task
@@ -178,16 +178,16 @@ class Workers:
     async def _in_thread(self, call: Any, *arguments: Any) -> Any:
         return await asyncio.get_running_loop().run_in_executor(self._threads, call, *arguments)
 
-    async def _receive(self, worker: _Worker, seconds: float) -> tuple[int | None, Any]:
-        """What a process says; (None, True) where it ran out of time, (None, False) where it died."""
+    async def _receive(self, worker: _Worker, seconds: float) -> tuple[int, Any]:
+        """What a process says, or that it ran out of time, or that it died."""
 
-        def wait() -> tuple[int | None, Any]:
+        def wait() -> tuple[int, Any]:
             try:
-                return worker.pipe.recv() if worker.pipe.poll(seconds) else (None, True)
+                return worker.pipe.recv() if worker.pipe.poll(seconds) else (_LATE, None)
             except (EOFError, OSError):
-                return None, False
+                return _ENDED, None
 
-        answer: tuple[int | None, Any] = await self._in_thread(wait)
+        answer: tuple[int, Any] = await self._in_thread(wait)
         return answer
 
     async def _dismiss(self, worker: _Worker) -> None:
@@ -262,27 +262,30 @@ class Workers:
     async def _work(
         self, worker: _Worker, task: str, arguments: dict[str, Any], seconds: float, background: bool
     ) -> Any:
+        kind: int
+        content: Any
         try:
             try:
                 await self._in_thread(worker.pipe.send, (task, arguments))
             except OSError:
-                kind, content = None, False
+                kind, content = _ENDED, None
             else:
                 kind, content = await self._receive(worker, seconds)
         finally:
             self._background -= background
         self.done += 1
-        if kind is None:
+        if kind in (_LATE, _ENDED):
             self.replaced += 1
             await self._dismiss(worker)
             if not self._closing:
                 self._keep(self._hire())
-            raise TimeExceeded(seconds) if content else ProcessEnded()
+            raise TimeExceeded(seconds) if kind == _LATE else ProcessEnded()
         self._release(worker)
         if kind == _REFUSED:
-            raise Refused(*content)
+            status, sentence = content
+            raise Refused(status, sentence)
         if kind == _FAILED:
-            raise Refused(500, content)
+            raise Refused(500, str(content))
         return content
 
     async def stop(self) -> None:

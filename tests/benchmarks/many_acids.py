@@ -26,11 +26,14 @@ SKELETONS = (
     "OC(=O)CN(C{0})S(=O)(=O)c1cc({1})c({2})cc1",
     "OC(=O)CC(C(=O)O)Cc1c({0})cc({1})c({2})c1",
 )
-GROUPS = (
-    "C CC C(C)C C(C)(C)C CCC C7CC7 C7CCCCC7 F Cl Br C#N C(F)(F)F O OC OCC OC(F)(F)F OC(C)C Oc7ccccc7 OCc7ccccc7 "
-    "N(C)C NC(C)=O NC(=O)c7ccccc7 N7CCOCC7 C(C)=O C(=O)OC C(=O)N C(=O)NC C(=O)N(C)C S(C)(=O)=O SC [N+](=O)[O-] "
-    "c7ccccc7 c7ccc(F)cc7 c7ccc(OC)cc7 c7ccncc7 c7cccs7 n7cccn7 C=C C#C CO"
-).split()
+# fmt: off
+GROUPS = [
+    "C", "CC", "C(C)C", "C(C)(C)C", "CCC", "C7CC7", "C7CCCCC7", "F", "Cl", "Br", "C#N", "C(F)(F)F", "O",
+    "OC", "OCC", "OC(F)(F)F", "OC(C)C", "Oc7ccccc7", "OCc7ccccc7", "N(C)C", "NC(C)=O", "NC(=O)c7ccccc7",
+    "N7CCOCC7", "C(C)=O", "C(=O)OC", "C(=O)N", "C(=O)NC", "C(=O)N(C)C", "S(C)(=O)=O", "SC", "[N+](=O)[O-]",
+    "c7ccccc7", "c7ccc(F)cc7", "c7ccc(OC)cc7", "c7ccncc7", "c7cccs7", "n7cccn7", "C=C", "C#C", "CO",
+]
+# fmt: on
 LIMIT = len(SKELETONS) * len(GROUPS) ** 3
 _STRIDE = 7_368_787  # a prime that divides no limit here: neighbours in the list have little in common
 

@@ -92,9 +92,17 @@ class Console:
         self.said: list[str] = []
 
     def listen(self, page: Any) -> None:
-        page.on("console", lambda m: self.said.append(f"{m.type}: {m.text}") if m.type in ("error", "warning") else None)
+        page.on("console", self._message)
         page.on("pageerror", lambda problem: self.said.append(f"uncaught: {problem}"))
-        page.on("requestfailed", lambda r: self.said.append(f"failed: {r.url} {r.failure}") if "ABORTED" not in str(r.failure) else None)
+        page.on("requestfailed", self._failed)
+
+    def _message(self, message: Any) -> None:
+        if message.type in ("error", "warning"):
+            self.said.append(f"{message.type}: {message.text}")
+
+    def _failed(self, request: Any) -> None:
+        if "ABORTED" not in str(request.failure):  # the page itself gives up what it no longer needs
+            self.said.append(f"failed: {request.url} {request.failure}")
 
 
 @pytest.fixture
@@ -112,10 +120,9 @@ def open_page(chromium: Any, client: Any, server: str, console: Console) -> Iter
 
     def opened(address: str = "", *, width: int = 1280, height: int = 900, scheme: str = "light") -> Any:
         context = chromium.new_context(
-            viewport={"width": width, "height": height}, color_scheme=scheme, accept_downloads=True, reduced_motion="reduce"
+            viewport={"width": width, "height": height}, color_scheme=scheme, reduced_motion="reduce"
         )
         contexts.append(context)
-        context.route("**", lambda route: route.continue_() if route.request.url.startswith((server, "data:", "blob:")) else route.abort())
         page = context.new_page()
         page.set_default_timeout(20_000)
         page.server = server

@@ -7,6 +7,7 @@ import time
 from typing import Any
 
 HANGS, ENDS_PROCESS, FAILS = "CC(F)C(=O)O", "CC(I)C(=O)O", "CC(Br)C(=O)O"
+HANGS_OVER_CONTRIBUTIONS = "CC(Cl)C(=O)O"
 
 
 def open_desk(folder: object) -> None:
@@ -31,7 +32,9 @@ def misbehave(smiles: str) -> None:
         raise ArithmeticError("made to fail")
 
 
-def acid(desk: None, smiles: str, coverage: float, step: int) -> dict[str, Any]:
+def acid(desk: None, smiles: str, coverage: float, step: int, contributions: bool = True) -> dict[str, Any]:
+    if smiles == HANGS_OVER_CONTRIBUTIONS and contributions:
+        time.sleep(600)
     misbehave(smiles)
     return {"smiles": smiles, "name": "", "model": "", "shown_step": 1, "steps": [], "notes": []}
 

@@ -104,7 +104,8 @@ def test_a_phenol_is_noted(client: Any) -> None:
 def test_swapping_a_group_gives_the_acid_that_is_meant(client: Any) -> None:
     question = {"smiles": "OC(=O)c1ccc(Cl)cc1", "position": "para", "group": "NO2"}
     answer = client.post("/api/v1/swap", json=question).json()
-    assert answer["smiles"] == client.get("/api/v1/acid", params={"smiles": "OC(=O)c1ccc([N+](=O)[O-])cc1"}).json()["smiles"]
+    meant = client.get("/api/v1/acid", params={"smiles": "OC(=O)c1ccc([N+](=O)[O-])cc1"}).json()
+    assert answer["smiles"] == meant["smiles"]
     assert answer["swapped"] == {"place": "para", "old": "chloro", "new": "NO2"}
 
 
@@ -124,11 +125,11 @@ def test_analogues_are_those_of_the_command_line(client: Any, checkout: Path, tm
     assert [row["pka"] for row in rows] == sorted(row["pka"] for row in rows)
 
 
-def test_a_wanted_range_keeps_what_may_lie_in_it(client: Any) -> None:
+def test_a_wanted_range_keeps_what_lies_in_it(client: Any) -> None:
     question = {"smiles": "OC(=O)c1ccccc1", "position": "meta: H", "low": 3.3, "high": 3.6}
     rows = client.post("/api/v1/analogues", json=question).json()["rows"]
     assert 3 < len(rows) < 150
-    assert all(row["high"] >= 3.3 and row["low"] <= 3.6 for row in rows)
+    assert all(3.3 <= row["pka"] <= 3.6 for row in rows)
 
 
 def test_the_base_is_that_of_the_command_line(client: Any, checkout: Path, tmp_path: Path) -> None:
@@ -341,7 +342,7 @@ def raw(server: str, request: bytes) -> bytes:
 
 
 def test_a_large_body_is_refused_before_it_is_sent(client: Any, server: str) -> None:
-    head = b"POST /api/v1/predict HTTP/1.1\r\nHost: 127.0.0.1\r\nContent-Type: application/json\r\nContent-Length: 99999999\r\n\r\n"
+    head = b"POST /api/v1/predict HTTP/1.1\r\nHost: 127.0.0.1\r\nContent-Length: 99999999\r\n\r\n"
     answer = raw(server, head)
     assert answer.startswith(b"HTTP/1.1 413") and b"20 MiB" in answer
 
@@ -361,7 +362,9 @@ def test_a_request_without_host_is_refused(client: Any, server: str) -> None:
     assert raw(server, b"GET /api/v1/about HTTP/1.0\r\n\r\n").startswith(b"HTTP/1.1 400")
 
 
-@pytest.mark.parametrize("host", ["evil.example", "127.0.0.1.evil.example", "evil.example:80", "", "localhost.evil", "10.0.0.1"])
+@pytest.mark.parametrize(
+    "host", ["evil.example", "127.0.0.1.evil.example", "evil.example:80", "", "localhost.evil", "10.0.0.1"]
+)
 def test_a_foreign_host_is_refused(client: Any, host: str) -> None:
     answer = client.get("/api/v1/about", headers={"host": host})
     assert answer.status_code in (400, 403)
@@ -392,7 +395,10 @@ def test_the_own_origin_is_not_foreign(client: Any, server: str) -> None:
     assert answer.status_code == 200
 
 
-@pytest.mark.parametrize("path", ["/static/../app.py", "/static/%2e%2e/app.py", "/static/..%2f..%2fetc%2fpasswd", "/static//etc/passwd"])
+@pytest.mark.parametrize(
+    "path",
+    ["/static/../app.py", "/static/%2e%2e/app.py", "/static/..%2f..%2fetc%2fpasswd", "/static//etc/passwd"],
+)
 def test_no_path_leads_to_other_files(client: Any, path: str) -> None:
     assert client.get(path).status_code == 404
 
@@ -421,7 +427,8 @@ def test_the_interface_is_documented_on_its_own_page(client: Any) -> None:
 def test_twenty_clients_at_once_get_right_answers(client: Any, server: str) -> None:
     import httpx
 
-    acids = ["C" * n + "C(=O)O" for n in range(1, 11)] + [f"OC(=O)c1cccc({x})c1" for x in ("F", "Cl", "Br", "I", "O", "N", "C", "CC", "OC", "SC")]
+    acids = ["C" * n + "C(=O)O" for n in range(1, 11)]
+    acids += [f"OC(=O)c1cccc({x})c1" for x in ("F", "Cl", "Br", "I", "O", "N", "C", "CC", "OC", "SC")]
     alone = [rows_of(client, s)[0]["pka"] for s in acids]
 
     def ask(k: int) -> list[float]:

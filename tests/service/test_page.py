@@ -4,12 +4,13 @@ from __future__ import annotations
 
 import csv
 import re
+import time
 from pathlib import Path
 from typing import Any
 
 import pytest
 
-WAYS = [(1280, "light"), (1280, "dark"), (390, "light"), (390, "dark")]
+WAYS = [(1280, "light"), (390, "dark")]
 STATES = {
     "start": "",
     "one acid": "#/acid?s=OC(%3DO)c1ccccc1O",
@@ -23,15 +24,23 @@ STATES = {
 }
 
 
+def until(page: Any, expression: str, argument: object = None) -> None:
+    """Wait for a condition; the page's policy forbids the browser to compile it there."""
+    for _ in range(400):
+        if page.evaluate(expression, argument):
+            return
+        page.wait_for_timeout(50)
+    pytest.fail(f"never came true: {expression}")
+
+
 def settled(page: Any) -> None:
-    page.wait_for_load_state("networkidle")
-    page.wait_for_function("!document.querySelector('.loading, [aria-busy]')")
+    until(page, "!document.querySelector('.loading, [aria-busy]')")
 
 
 def pka_shown(page: Any) -> float:
-    found = re.search(r"[−\d.]+$", page.locator(".flag").first.inner_text().strip())
+    found = re.match(r"(?:pKa|step 1)\s+([−\d.]+\d)", page.locator(".flag").first.inner_text())
     assert found
-    return float(found[0].replace("−", "-"))
+    return float(found[1].replace("−", "-"))
 
 
 def test_from_an_empty_page_to_a_downloaded_report(open_page: Any, tmp_path: Path) -> None:
@@ -44,7 +53,7 @@ def test_from_an_empty_page_to_a_downloaded_report(open_page: Any, tmp_path: Pat
     page.get_by_label("Place", exact=True).select_option(label="para: H")
     page.get_by_label("Instead of H").fill("nitro")
     page.get_by_role("button", name="NO2", exact=True).click()
-    page.wait_for_function("document.title.includes('4-nitrobenzoic')")
+    until(page, "document.title.includes('4-nitrobenzoic')")
     after = pka_shown(page)
     assert after == pytest.approx(3.44, abs=0.15) and after < before
     trail = page.get_by_role("region", name="Trail")
@@ -70,18 +79,18 @@ def test_the_trail_can_be_walked_back_and_has_a_link(open_page: Any) -> None:
     for group in ("Cl", "F"):
         page.get_by_label("Place", exact=True).select_option(label="α: H")
         page.locator(".group", has_text=re.compile(f"^{group}$")).click()
-        page.wait_for_function("n => document.querySelectorAll('.trail li').length === n", arg=2 if group == "Cl" else 3)
+        until(page, "n => document.querySelectorAll('.trail li').length === n", 2 if group == "Cl" else 3)
         settled(page)
     last = pka_shown(page)
     assert last < start - 1
     page.go_back()
     settled(page)
-    page.wait_for_function("document.querySelectorAll('.trail li').length === 2")
+    until(page, "document.querySelectorAll('.trail li').length === 2")
     page.go_forward()
     settled(page)
-    page.wait_for_function("document.querySelectorAll('.trail li').length === 3")
+    until(page, "document.querySelectorAll('.trail li').length === 3")
     page.get_by_role("region", name="Trail").get_by_role("button", name="start").click()
-    page.wait_for_function("document.title.includes('acetic')")
+    until(page, "document.title.includes('acetic')")
     again = open_page(page.url.partition("/#")[2] and "#" + page.url.partition("#")[2])
     again.wait_for_selector(".trail li")
     settled(again)
@@ -125,7 +134,7 @@ def test_measured_neighbours_are_shown_on_focus(open_page: Any) -> None:
     assert card.is_visible() and "measured" in card.inner_text() and card.locator("img").count() == 1
     page.keyboard.press("Escape")
     assert not card.is_visible()
-    assert "Measured 3.9" in page.locator(".saying li").inner_text().splitlines()[0]
+    assert page.locator(".saying li").first.inner_text().startswith("Measured 3.9")
 
 
 def test_acids_below_zero_stay_on_the_ruler(open_page: Any) -> None:
@@ -140,11 +149,12 @@ def test_acids_below_zero_stay_on_the_ruler(open_page: Any) -> None:
 
 
 def test_a_file_becomes_a_table_that_sorts_filters_and_downloads(open_page: Any, tmp_path: Path) -> None:
-    lines = ["id,smiles"] + [f"acid {i},OC(=O)c1ccc({'C' * i})cc1" for i in range(1, 60)] + ["=bad,nonsense", "di,OC(=O)CC(=O)O"]
+    lines = ["id,smiles", *(f"acid {i},OC(=O)c1ccc({'C' * (i % 9 + 1)})cc1" for i in range(1, 60))]
+    lines += ["=bad,nonsense", "di,OC(=O)CC(=O)O"]
     (tmp_path / "list.csv").write_text("\n".join(lines), encoding="utf-8")
     page = open_page("#/many")
     page.locator("#file").set_input_files(tmp_path / "list.csv")
-    page.wait_for_function("document.querySelector('#progress')?.innerText.startsWith('61 structures')")
+    until(page, "document.querySelector('#progress')?.innerText.startsWith('61 structures')")
     assert page.locator("tbody tr").count() == 50
     page.get_by_role("button", name="pKa", exact=True).click()
     assert "di" in page.locator("tbody tr").first.inner_text()
@@ -160,13 +170,14 @@ def test_a_file_becomes_a_table_that_sorts_filters_and_downloads(open_page: Any,
     with (tmp_path / "acids.csv").open(encoding="utf-8", newline="") as handle:
         assert [row["id"] for row in csv.DictReader(handle)] == ["di"]
     assert {p.suffix for p in tmp_path.iterdir()} >= {".csv", ".xlsx", ".sdf", ".html"}
-    page.wait_for_function("location.hash.includes('z=')")
+    until(page, "location.hash.includes('z=')")
     again = open_page("#" + page.url.partition("#")[2])
-    again.wait_for_function("document.querySelector('#progress')?.innerText.startsWith('61 structures')")
+    until(again, "document.querySelector('#progress')?.innerText.startsWith('61 structures')")
 
 
 def test_ten_thousand_rows_can_be_cancelled_and_what_came_stays(open_page: Any, client: Any, tmp_path: Path) -> None:
-    (tmp_path / "long.smi").write_text("".join(f"OC(=O)c1ccc({'C' * (i % 9 + 1)})cc1 a{i}\n" for i in range(10_000)), encoding="utf-8")
+    lines = (f"OC(=O)c1ccc({'C' * (i % 9 + 1)})cc1 a{i}\n" for i in range(10_000))
+    (tmp_path / "long.smi").write_text("".join(lines), encoding="utf-8")
     page = open_page("#/many")
     page.locator("#file").set_input_files(tmp_path / "long.smi")
     page.wait_for_selector("progress")
@@ -192,8 +203,6 @@ def test_closing_the_tab_stops_the_work(open_page: Any, client: Any, tmp_path: P
         if done == page_done:
             break
         page_done = done
-        import time
-
         time.sleep(0.7)
     assert done == page_done, "the work goes on"
 
@@ -217,7 +226,7 @@ def test_decisions_reopen_from_their_link(open_page: Any) -> None:
     assert again.locator(".headline").inner_text() == said
     for kind in ("Window", "Buffer", "Risk"):
         page.get_by_role("link", name=kind, exact=True).click()
-        page.wait_for_function("kind => document.title.endsWith(kind.toLowerCase())", arg=kind)
+        until(page, "kind => document.title.endsWith(kind.toLowerCase())", kind)
         if kind == "Window":
             page.get_by_label("the other acid, SMILES").fill("OC(=O)c1ccccc1")
         page.get_by_role("main").get_by_role("button", name="Decide").click()
@@ -225,7 +234,9 @@ def test_decisions_reopen_from_their_link(open_page: Any) -> None:
 
 
 @pytest.mark.parametrize(("width", "scheme"), WAYS)
-def test_nothing_sticks_out_and_nobody_is_shut_out(open_page: Any, axe: str, console: Any, width: int, scheme: str) -> None:
+def test_nothing_sticks_out_and_nobody_is_shut_out(
+    open_page: Any, axe: str, console: Any, width: int, scheme: str
+) -> None:
     """No part wider than the page, and no finding of axe-core (WCAG 2.2 A and AA)."""
     page = open_page(width=width, scheme=scheme)
     for state, address in STATES.items():

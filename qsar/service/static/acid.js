@@ -87,7 +87,7 @@ function render(main, state) {
   say(`${title(view)}: ${view.steps.map((s) => sentence(s, view.steps.length)).join("; ")}`);
 }
 
-const title = (view) => view.name || view.smiles;
+const title = (view) => view.name || (view.smiles.length > 60 ? "This acid" : view.smiles);
 
 function sentence(step, steps) {
   const which = steps > 1 ? `step ${step.step}, ` : "";
@@ -97,7 +97,7 @@ function sentence(step, steps) {
 // What the ruler says, in words. The measured value comes first where there is one.
 function saying({ view, coverage }) {
   return el("section", { class: "saying", "aria-label": "Result" },
-    el("h1", {}, title(view)), view.name ? el("p", { class: "smiles" }, view.smiles) : null,
+    el("h1", {}, title(view)), title(view) === view.smiles ? null : el("p", { class: "smiles" }, view.smiles),
     el("ol", { class: view.steps.length > 1 ? "steps" : "steps single" }, view.steps.map((step) => el("li", { class: step.step === view.shown_step ? "shown" : null },
       step.measured === null ? null : el("p", { class: "measured" },
         el("strong", {}, `Measured ${number(step.measured)}`),
@@ -142,6 +142,10 @@ function trailPart(state, axis) {
 // From the parent to the acid, one substituent after the other, along the same axis.
 function walk(view, axis) {
   const step = view.steps[view.shown_step - 1];
+  if (step.parent_pka === null) {
+    return el("section", { class: "walk", "aria-label": "How the value comes about" }, el("h2", {}, "How it comes about"),
+      el("p", {}, "This acid has too many substituents to say in a short time what each of them does."));
+  }
   let now = step.parent_pka;
   const parent = el("span", {}, "parent ", el("small", { class: "smiles" }, step.parent));
   peek(parent, step.parent, [el("span", {}, step.parent)]);

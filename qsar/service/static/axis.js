@@ -74,8 +74,8 @@ export const VERDICTS = {
   unusable: "not usable",
 };
 
-export const verdict = (domain) =>
-  el("span", { class: `verdict ${domain}` }, el("span", { class: "sign", "aria-hidden": "true" }), VERDICTS[domain]);
+export const verdict = (domain, text = VERDICTS[domain]) =>
+  el("span", { class: `verdict ${domain}` }, el("span", { class: "sign", "aria-hidden": "true" }), text);
 
 // A card that shows a measured acid while its tick is pointed at or has the focus.
 export function peek(target, smiles, content) {
@@ -200,5 +200,5 @@ function flagRows(steps, axis) {
   for (let k = 1; k < steps.length; k += 1) {
     closest = Math.min(closest, axis.share(steps[k].pka) - axis.share(steps[k - 1].pka));
   }
-  return closest < (window.innerWidth < 700 ? 26 : 11) ? Math.min(steps.length, 3) : 1;
+  return closest < (window.innerWidth < 700 ? 34 : 12) ? Math.min(steps.length, 3) : 1;
 }

@@ -14,7 +14,7 @@ export function bench(state) {
     chosen = same ? { smiles: view.smiles, key: same.key, place: chosen.place, hydrogen: chosen.hydrogen } : { smiles: view.smiles, key: null };
   }
   const panel = el("div", { class: "panel" });
-  const handles = el("div", { class: "handles", role: "group", "aria-label": "Places on the drawing" });
+  const handles = el("div", { class: view.positions.length > 40 ? "handles crowded" : "handles", role: "group", "aria-label": "Places on the drawing" });
   const list = el("select", { id: "place", onchange: () => choose(list.value) },
     el("option", { value: "" }, "choose …"),
     view.positions.map((p) => el("option", { value: p.key }, p.label)));
@@ -124,7 +124,7 @@ async function tryAll(state, place, low, high, target) {
       el("ol", { class: "lanes", tabindex: "0", "aria-label": count }, usable.map((row) => lane(
         el("button", { type: "button", class: "plain", onclick: () => take(state, place, { name: row.group, smiles: groups.find((g) => g.name === row.group).smiles }, target) }, row.group),
         axis, [wanted.map((node) => node.cloneNode()), bar(axis, row.low, row.high, row.domain), dot(axis, row.pka, row.domain)],
-        [el("b", {}, number(row.pka)), ` (${signed(row.change)}) `, el("small", {}, verdict(row.domain))], { tag: "li" }))));
+        [el("b", {}, number(row.pka)), ` (${signed(row.change)}) `, el("small", {}, verdict(row.domain, row.domain))], { tag: "li" }))));
   } catch (problem) {
     failed(target, problem, () => tryAll(state, place, low, high, target));
   }
