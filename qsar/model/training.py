@@ -89,7 +89,26 @@ def assemble(
     *,
     withhold_structures: bool,
 ) -> Model:
-    """Calibrate fitted members and join everything into a model."""
+    """Calibrate fitted members and join everything into a model.
+
+    One thread, so that no sum depends on how many there are.
+    """
+    import scipy.linalg  # noqa: F401 - its threads are limited too
+    from threadpoolctl import threadpool_limits
+
+    with threadpool_limits(1):
+        return _assemble(data, members, fold, name, provenance, withhold_structures=withhold_structures)
+
+
+def _assemble(
+    data: TrainingSet,
+    members: Members,
+    fold: Ints,
+    name: str,
+    provenance: dict[str, Any],
+    *,
+    withhold_structures: bool,
+) -> Model:
     micro, boosted = out_of_fold(data, members, fold)
     without = data.steps(micro)
     trend, correction = members.predict(data.x)

@@ -17,6 +17,7 @@ from qsar.model.kernel import Scaling
 from qsar.model.members import fit_member, fold_of_acids, join_members
 from qsar.model.training import train
 from qsar.model.training_set import TrainingSet, training_set
+from qsar.model.user_table import weights_of
 from qsar.paths import reference_table
 from qsar.table import read_table, sha256
 
@@ -25,7 +26,8 @@ FOLD = 0
 
 @pytest.fixture(scope="module")
 def data() -> TrainingSet:
-    return training_set(read_table(reference_table()))
+    rows = read_table(reference_table())
+    return training_set(rows, weights_of(rows))
 
 
 def test_the_card_names_the_shipped_table(model: Model) -> None:
@@ -74,7 +76,8 @@ def test_a_full_rebuild_is_the_same_bit_for_bit(model: Model) -> None:
     other = {k: v for k, v in here.items() if model.card["libraries"][k] != v}
     if other:
         pytest.skip(f"bits are promised for the library versions of the card only; here: {other}")
-    rebuilt = train(read_table(reference_table()), model.name, settings_from(model.card["settings"]))
+    rows = read_table(reference_table())
+    rebuilt = train(rows, model.name, settings_from(model.card["settings"]), weights=weights_of(rows))
     stored, fresh = arrays_of(model), arrays_of(rebuilt)
     assert [name for name in stored if not np.array_equal(stored[name], fresh[name])] == []
     for key in ("acids", "steps", "metrics", "borderline_above", "outside_above", "tree_depth"):
