@@ -2,7 +2,8 @@
 
 The inductive constant sigma_I and the resonance constant sigma_R of Charton (Prog. Phys. Org. Chem. 1981, 13,
 119; from memory) do not come from the ionisation of meta- and para-benzoic acids, so that a benzoic acid that is
-held out is not predicted with a constant that was made from its own pKa.
+held out is not predicted with a constant that was made from its own pKa. The column ``estimated`` names the values
+of a row that are no published ones but own estimates, set by analogy with a neighbouring group before any training.
 """
 
 from __future__ import annotations
