@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import re
 import sys
+import unicodedata
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -204,7 +205,24 @@ def _record(identity: str, smiles: str, where: str) -> Record:
     elif len(smiles) > MAX_SMILES:
         error = f"the SMILES is longer than {MAX_SMILES:,} characters: too large a molecule"
         smiles = smiles[:60] + "…"
+    else:
+        error = _foreign_character(smiles)
     return Record(identity, smiles, where, None, error)
+
+
+def _foreign_character(smiles: str) -> str | None:
+    """What is wrong with a character that no SMILES holds; None if there is none.
+
+    RDKit stops at such a character, at times without a word, and returns the acid written before it.
+    """
+    structure = smiles.partition(" |")[0]
+    if "\n" in structure or "\r" in structure:
+        return "a line break is inside the SMILES; write the structure in one line"
+    for character in structure:
+        if not " " <= character <= "~" and character not in "\t\0":  # RDKit refuses these two itself
+            what = unicodedata.name(character, f"U+{ord(character):04X}").lower()
+            return f"the SMILES holds a character that no SMILES has ({what}); type that place again"
+    return None
 
 
 def _read_table(path: Path, note: Note) -> Iterator[Record]:
@@ -213,12 +231,17 @@ def _read_table(path: Path, note: Note) -> Iterator[Record]:
         if column is None:
             raise UserError(f"no column smiles among its columns ({_listed(table.columns)}); rename one")
         labels = [i for i in (table.find("id"), table.find("name")) if i is not None]
+        moved = False
         for position, row in enumerate(table.rows, start=1):
             where = f"{path.name}, row {row.number}"
             if row.error:
                 yield Record(str(position), "", where, None, row.error)
                 continue
             identity = next((row.cells[i] for i in labels if row.cells[i]), str(position))
+            if not moved and any(row.cells[len(table.columns) :]):
+                moved = True  # said once: the column smiles may then hold what belongs to another column
+                count = f"{len(row.cells)} cells where the header has {len(table.columns)}"
+                note(f"row {row.number} has {count}; quote a cell that holds the separator, here and below")
             yield _record(identity, row.cells[column], where)
 
 

@@ -123,6 +123,37 @@ def test_rows_are_numbered_as_a_spreadsheet_does(write: Callable[..., Path]) -> 
     assert "empty" in str(records[1].error)
 
 
+@pytest.mark.parametrize(
+    ("smiles", "word"),
+    [
+        ("OC(=O)C\u0421", "cyrillic capital letter es"),  # RDKit reads what stands before it: acetic acid
+        ("OC(=O)C\u216d", "roman numeral"),
+        ("OC(=O)\nCCl", "line break"),  # formic acid
+        ("OC(=O)C[N+](=O)[O\u2212]", "minus sign"),
+        ("OC(=O)\u200bCCl", "zero width space"),
+    ],
+)
+def test_character_that_no_smiles_has_is_said(write: Callable[..., Path], smiles: str, word: str) -> None:
+    path = write("acids.csv", f'id,smiles\na,"{smiles}"\nb,CC(=O)O\n')
+    records = read(path)
+    assert word in str(records[0].error)
+    assert [record.error for record in records[1:]] == [None]
+    assert word in str(read(smiles)[0].error)
+
+
+def test_labels_between_bars_may_hold_any_character() -> None:
+    assert read("OC(=O)CCl |$;;;;\u00e9$|")[0].error is None
+
+
+def test_cells_that_have_moved_are_said_once(write: Callable[..., Path]) -> None:
+    notes: list[str] = []
+    path = write("acids.csv", "id,smiles\n1,2,3-triazole,OC(=O)c1c[nH]nn1\na,OC=O,,\nb,OC=O,x\n")
+    records = list(read_sources([str(path)], on_note=notes.append))
+    assert len(records) == 3
+    assert len(notes) == 1
+    assert "row 2 has 4 cells where the header has 2" in notes[0]
+
+
 def test_quotation_mark_that_is_never_closed_costs_one_row(write: Callable[..., Path]) -> None:
     rows = [f"r{n},{smiles}" for n, smiles in enumerate(ACIDS * 40)]
     rows[2] = 'r2,"OC=O'

@@ -37,8 +37,18 @@ COLUMNS = (
 def add_arguments(parser: argparse.ArgumentParser) -> None:
     """Describe the arguments of the command."""
     add_acid_arguments(parser)
-    parser.add_argument("--acid", type=not_negative, metavar="MOL_L", help="acid form (default: 0.05 mol/L)")
-    parser.add_argument("--salt", type=not_negative, metavar="MOL_L", help="salt form (default: 0.05 mol/L)")
+    parser.add_argument(
+        "--acid",
+        type=not_negative,
+        metavar="MOL_L",
+        help="acid form (default: 0.05 mol/L, or none where --salt is given)",
+    )
+    parser.add_argument(
+        "--salt",
+        type=not_negative,
+        metavar="MOL_L",
+        help="salt form (default: 0.05 mol/L, or none where --acid is given)",
+    )
     parser.add_argument(
         "--total",
         type=positive,
@@ -100,6 +110,8 @@ def run(args: argparse.Namespace) -> int:
         raise UserError("--ionic-strength: the Davies equation is used from 0 to 0.5 mol/L only")
     if args.acid is not None and args.salt is not None and args.acid + args.salt == 0.0:
         raise UserError("--acid and --salt are both zero; there is no buffer without either")
+    if args.ph is not None and (args.acid is None) != (args.salt is None):
+        raise UserError("--ph with only one of --acid and --salt: leave both out to find their ratio, or give both")
     check_outputs(args)
     acids = Acids(args)
     results = []

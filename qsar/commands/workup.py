@@ -48,6 +48,7 @@ WINDOW_COLUMNS = (
     "measure_first", "measure_to", "measure_both",
 )  # fmt: skip
 _MILLI = 1e-3
+_LOG_P_ERROR = 0.7  # of Crippen's atom contributions: Wildman & Crippen 1999, 0.68
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
@@ -143,6 +144,8 @@ def run(args: argparse.Namespace) -> int:
     from qsar.decisions.bases import BASES, base_named
     from qsar.decisions.workup import plan_workup
 
+    if args.ionic_strength > 0.5:
+        raise UserError("--ionic-strength: the Davies equation is used from 0 to 0.5 mol/L only")
     check_outputs(args)
     acids = Acids(args)
     with refusals():
@@ -157,6 +160,7 @@ def run(args: argparse.Namespace) -> int:
         if position:
             print()
         _show(result)
+        _show_log_p_error(result, bases, args.risk)
         if args.plot is not None:
             from qsar.decisions.plots import save, workup_figure
 
@@ -263,6 +267,28 @@ def _show(result: Workup) -> None:
             f"Without a measurement take {result.safe.base.name}: wrong with probability "
             f"{say_probability(wrong)}."
         )
+
+
+def _show_log_p_error(result: Workup, bases: Sequence[Base], risk: float) -> None:
+    """Whether an error of an estimated log P would change the choice; its error often exceeds that of the pKa."""
+    from qsar.decisions.speciation import LogP
+    from qsar.decisions.workup import plan_workup
+
+    if "Crippen" not in result.log_p.label:
+        return
+    towards = 1.0 if result.extraction.into == "water" else -1.0  # the direction that works against the target
+    other = LogP(result.log_p.value + towards * _LOG_P_ERROR, result.log_p.label)
+    chosen = plan_workup(result.acid, other, result.extraction, bases, risk).chosen
+    before = None if result.chosen is None else result.chosen.base
+    after = None if chosen is None else chosen.base
+    if before is None:
+        return
+    start = f"At log P {other.value:.2f}, one standard error {'above' if towards > 0 else 'below'} the estimate,"
+    if after == before:
+        show(f"{start} {before.name} still does.")
+    else:
+        instead = "no base of this list does" if after is None else f"it takes {after.name}"
+        show(f"{start} {before.name} no longer does and {instead}: give --log-p if you know it.")
 
 
 def _two_acids(results: Sequence[Workup], args: argparse.Namespace) -> None:

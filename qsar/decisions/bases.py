@@ -104,7 +104,7 @@ def base_named(text: str) -> Base:
     Raises
     ------
     ValueError
-        For an unknown name or an unreadable constant.
+        For an unknown name, or a constant that is unreadable or not from 0 to 14.
     """
     name, separator, constant = text.rpartition(":")
     if separator:
@@ -112,6 +112,8 @@ def base_named(text: str) -> Base:
             pka = float(constant)
         except ValueError:
             raise ValueError(f"base {text!r}: the part after the colon is not a pKa") from None
+        if not 0.0 <= pka <= 14.0:
+            raise ValueError(f"base {text!r}: give the pKa of the protonated amine in water, from 0 to 14")
         return Base(name.strip(), (pka,), 1, 0, (0.0,), None, "as given")
     wanted = _SHORT.get(text.strip().lower(), text.strip().lower())
     for base in BASES:

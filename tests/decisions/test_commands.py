@@ -136,6 +136,19 @@ def test_buffer_finds_the_ratio(tmp_path: Path, capsys: pytest.CaptureFixture[st
     assert (tmp_path / "b.svg").read_text(encoding="utf-8").lstrip().startswith("<?xml")
 
 
+def test_workup_says_when_the_error_of_an_estimated_log_p_decides(capsys: pytest.CaptureFixture[str]) -> None:
+    """Benzoic acid: log P 1.87 measured (Hansch, Leo & Hoekman 1995, from memory), 1.38 by Crippen's contributions."""
+    arguments = ["workup", "OC(=O)c1ccccc1", "--pka", "4.20"]
+    assert main(arguments) == 0
+    out = " ".join(capsys.readouterr().out.split())
+    assert "Gentlest that does: sodium hydrogencarbonate" in out
+    assert "sodium hydrogencarbonate no longer does and it takes triethanolamine: give --log-p" in out
+    assert main([*arguments, "--log-p", "1.87"]) == 0
+    out = " ".join(capsys.readouterr().out.split())
+    assert "Gentlest that does: triethanolamine" in out
+    assert "standard error above the estimate" not in out
+
+
 @pytest.mark.parametrize(
     ("arguments", "status", "message"),
     [
@@ -147,9 +160,12 @@ def test_buffer_finds_the_ratio(tmp_path: Path, capsys: pytest.CaptureFixture[st
         (["ionise", "CC(=O)O", "--pka", "4.2", "--pka", "5"], 2, "2 times for 1 acids"),
         (["ionise", "missing.csv", "--pka", "4.2"], 2, "no such file"),
         (["workup", "--pka", "4.2", "--log-p", "2", "--base", "lye"], 2, "is not known"),
+        (["workup", "--pka", "4.2", "--log-p", "2", "--base", "amine:99"], 2, "from 0 to 14"),
+        (["workup", "--pka", "4.2", "--log-p", "2", "--ionic-strength", "3"], 2, "0 to 0.5 mol/L"),
         (["workup", "--pka", "4.2"], 3, "give --log-p"),
         (["workup", "--pka", "4.2", "--log-p", "2", "--window", "w.csv"], 2, "for two acids"),
         (["buffer", "--pka", "4.2", "--acid", "0", "--salt", "0"], 2, "both zero"),
+        (["buffer", "--pka", "4.2", "--ph", "4.5", "--acid", "0.1"], 2, "leave both out"),
         (["buffer", "--pka", "4.2", "--ph", "11"], 3, "another acid"),
         (["buffer", "--pka", "4.2", "--ionic-strength", "2"], 2, "0 to 0.5 mol/L"),
         (["buffer", "--pka", "4.2", "--ionic-strength", "0.001"], 3, "own ions make"),
