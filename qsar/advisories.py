@@ -5,19 +5,20 @@ from __future__ import annotations
 import csv
 import re
 from collections import Counter
-from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cache
 from importlib.resources import files
 
 from rdkit import Chem
 
+from qsar.graph import Graph
+
 
 @dataclass(frozen=True)
 class Advisory:
     """A pattern and its sentence; `positive` and `negative` are SMILES that it must and must not match.
 
-    `least` are the elements (atomic number, atoms) without which the pattern cannot match, told from the pattern.
+    `least` is what the pattern needs at least, told from the pattern: pairs of a key of `census` and a number.
     """
 
     name: str
@@ -25,7 +26,7 @@ class Advisory:
     sentence: str
     positive: str
     negative: str
-    least: tuple[tuple[int, int], ...]
+    least: tuple[tuple[int | str, int], ...]
 
 
 @cache
@@ -41,32 +42,72 @@ def advisories() -> tuple[Advisory, ...]:
     return tuple(found)
 
 
-def _least(pattern: Chem.Mol) -> tuple[tuple[int, int], ...]:
-    """Elements that a pattern needs; atoms that may be one of several elements are not counted."""
-    counts: Counter[int] = Counter()
+HALOGENS = frozenset((9, 17, 35, 53))
+_HYDROXYL, _ARYL_HYDROXYL, _CARBONYL, _HALOGEN, _NITROGEN_H = "OH", "aryl OH", "C=O", "halogen", "NH"
+_SATURATED, _CARBON_H = "CX4", "CH"
+
+
+def census(graph: Graph) -> Counter[int | str]:
+    """Atoms of each element, by atomic number, and of some kinds that patterns ask for."""
+    counts: Counter[int | str] = Counter(graph.numbers)
+    numbers, hydrogens, neighbours, orders = graph.numbers, graph.hydrogens, graph.neighbours, graph.orders
+    counts[_HALOGEN] = sum(counts[number] for number in HALOGENS)
+    hydroxyl = aryl = carbonyl = nitrogen = saturated = carbon = 0
+    for a, number in enumerate(numbers):
+        if number == 8:
+            if hydrogens[a] == 1:
+                hydroxyl += 1
+                aryl += graph.aromatic[neighbours[a][0]]
+            elif 2.0 in orders[a]:
+                carbonyl += 1
+        elif number == 6 and not graph.aromatic[a]:
+            saturated += hydrogens[a] + len(neighbours[a]) == 4
+            carbon += 1 <= hydrogens[a] <= 2
+        elif number == 7:
+            nitrogen += hydrogens[a] == 1
+    counts[_HYDROXYL], counts[_ARYL_HYDROXYL], counts[_CARBONYL] = hydroxyl, aryl, carbonyl
+    counts[_NITROGEN_H], counts[_SATURATED], counts[_CARBON_H] = nitrogen, saturated, carbon
+    return counts
+
+
+def _least(pattern: Chem.Mol) -> tuple[tuple[int | str, int], ...]:
+    """What a pattern needs at least, as keys of `census`; atoms that may be anything are not counted."""
+    counts: Counter[int | str] = Counter()
     for atom in pattern.GetAtoms():
-        text = atom.GetSmarts().strip("[]")
+        text = atom.GetSmarts().strip("[]").replace("&", "")
+        beside = [(b.GetBondType(), b.GetOtherAtom(atom)) for b in atom.GetBonds()]
+        counts[_HYDROXYL] += text == "OX2H1"
+        counts[_ARYL_HYDROXYL] += text == "OX2H1" and any(n.GetSmarts() == "c" for _, n in beside)
+        counts[_NITROGEN_H] += text == "NX3H1"
+        counts[_SATURATED] += text in ("CX4", "CX4H3")
+        counts[_CARBON_H] += text == "CX4H2,CX3H1"
+        counts[_CARBONYL] += text == "O" and any(
+            kind == Chem.BondType.DOUBLE and n.GetAtomicNum() == 6 for kind, n in beside
+        )
         if re.search(r"[$!*]", text):
             continue
-        elements = {re.sub(r"[XHDR]\d*|[&;+-]", "", choice).casefold() for choice in text.split(",")}
+        elements = {re.sub(r"[XHDR]\d*|[;+-]", "", choice).casefold() for choice in text.split(",")}
+        numbers = {Chem.GetPeriodicTable().GetAtomicNumber(e.capitalize()) for e in elements if e.isalpha()}
         if len(elements) == 1:
-            counts[Chem.GetPeriodicTable().GetAtomicNumber(elements.pop().capitalize())] += 1
-    return tuple(counts.items())
+            counts.update(numbers)
+        counts[_HALOGEN] += len(numbers) == len(elements) and numbers <= HALOGENS
+    return tuple((key, n) for key, n in counts.items() if n)
 
 
-def advise(mol: Chem.Mol, numbers: Sequence[int] | None = None) -> tuple[str, ...]:
+def advise(mol: Chem.Mol, graph: Graph | None = None) -> tuple[str, ...]:
     """Sentences that apply to a molecule.
 
     Parameters
     ----------
     mol : rdkit.Chem.Mol
-    numbers : sequence of int, optional
-        Atomic numbers, where they have been read already: patterns whose elements are not there are not tried.
+    graph : Graph, optional
+        Its graph, where it has been read already: patterns that ask for more than is there are not tried.
     """
-    present = Counter(numbers) if numbers is not None else None
+    if graph is None:
+        return tuple(a.sentence for a in advisories() if mol.HasSubstructMatch(a.pattern))
+    present = census(graph)
     return tuple(
         a.sentence
         for a in advisories()
-        if (present is None or all(present[number] >= least for number, least in a.least))
-        and mol.HasSubstructMatch(a.pattern)
+        if all(present[key] >= least for key, least in a.least) and mol.HasSubstructMatch(a.pattern)
     )

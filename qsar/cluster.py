@@ -53,16 +53,18 @@ def connected(address: str) -> Iterator[Client]:
         client.close()  # type: ignore[no-untyped-call]
 
 
-def in_order(address: str, work: Callable[[T], R], pieces: Iterable[T]) -> Iterator[R]:
+def in_order(address: str, work: Callable[..., R], pieces: Iterable[T], shared: object = None) -> Iterator[R]:
     """Do a stream of pieces on the cluster; results come in the order of the pieces.
 
     Parameters
     ----------
     address : str
     work : callable
-        Can be pickled; does one piece.
+        Can be pickled; does one piece, with `shared` before it where that is given.
     pieces : iterable
         Never more than a few for each worker are taken ahead.
+    shared : object, optional
+        What every piece needs; sent to each worker once instead of with each piece.
 
     Yields
     ------
@@ -71,22 +73,32 @@ def in_order(address: str, work: Callable[[T], R], pieces: Iterable[T]) -> Itera
     Raises
     ------
     UserError
-        If the cluster cannot be reached, has no workers, or a piece ends one worker after the other.
+        If the cluster cannot be reached, has no workers, loses all that hold `shared`, or a piece ends one worker after
+        the other.
     """
     with connected(address) as client:
+        from concurrent.futures import CancelledError
+
         from distributed import KilledWorker
 
+        before: list[Any] = []
+        if shared is not None:
+            _under_way(client, address)  # there must be workers to send it to
+            before = [client.scatter(shared, broadcast=True, hash=False)]  # type: ignore[no-untyped-call]
         stream = iter(pieces)
         waiting: deque[Any] = deque()
         while True:
             for piece in islice(stream, max(_under_way(client, address) - len(waiting), 0)):
-                waiting.append(client.submit(work, piece, pure=False, retries=_RETRIES))
+                waiting.append(client.submit(work, *before, piece, pure=False, retries=_RETRIES))
             if not waiting:
                 return
             try:
                 result: R = waiting.popleft().result()
             except KilledWorker as problem:
                 reason = f"one piece of work ended several workers ({problem})"
+                raise UserError(f"--cluster {address}: {reason}") from problem
+            except CancelledError as problem:
+                reason = "all workers that held the data have ended; start the command again"
                 raise UserError(f"--cluster {address}: {reason}") from problem
             yield result
 

@@ -54,8 +54,8 @@ def check_temperature(temperature_c: float) -> float:
     low, high = TEMPERATURE_RANGE_C
     if not low <= temperature_c <= high:
         raise ValueError(
-            f"temperature {temperature_c:g} degC: the van 't Hoff correction is used from {low:g} to "
-            f"{high:g} degC only"
+            f"temperature {temperature_c:g} °C: the van 't Hoff correction is used from {low:g} to "
+            f"{high:g} °C only"
         )
     return float(temperature_c)
 

@@ -45,6 +45,25 @@ def check_target(target: str | os.PathLike[str]) -> Path:
     return path
 
 
+def check_folder(folder: str | os.PathLike[str]) -> Path:
+    """Make a folder, and check before long work that files can be written in it.
+
+    Raises
+    ------
+    UserError
+        If it is a file, cannot be made, or cannot be written in.
+    """
+    path = Path(folder)
+    if path.exists() and not path.is_dir():
+        raise UserError(f"cannot write to {folder}: it is a file; give the name of a folder")
+    try:
+        path.mkdir(parents=True, exist_ok=True)
+        with tempfile.TemporaryFile(dir=path):
+            return path
+    except (OSError, ValueError) as problem:
+        raise UserError(f"cannot write to the folder {folder}: {_reason(problem)}; choose another") from problem
+
+
 @contextmanager
 def atomic_path(target: str | os.PathLike[str]) -> Iterator[Path]:
     """Give a temporary file beside `target` that takes its name when the block ends well.

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 
 from rdkit import Chem
@@ -42,7 +43,7 @@ class Graph:
     side: dict[tuple[int, int, int], int] = field(default_factory=dict)
 
     @classmethod
-    def from_mol(cls, mol: Chem.Mol, *, stereo: bool = True) -> Graph:
+    def from_mol(cls, mol: Chem.Mol, *, stereo: bool = True, order: Sequence[int] | None = None) -> Graph:
         """Read atoms and bonds of a sanitised molecule without explicit hydrogens.
 
         Parameters
@@ -50,21 +51,28 @@ class Graph:
         mol : rdkit.Chem.Mol
         stereo : bool
             False where no configuration is stated, which spares looking for it.
+        order : sequence of int, optional
+            Atoms of `mol` in the order that the graph is to have; only without `stereo`.
+
+        Notes
+        -----
+        Neighbours are sorted, and so are rings: nothing depends on how the molecule was written.
         """
-        atoms = list(map(mol.GetAtomWithIdx, range(mol.GetNumAtoms())))
-        bonds = list(map(mol.GetBondWithIdx, range(mol.GetNumBonds())))
+        matrix = Chem.GetAdjacencyMatrix(mol, True)
+        rings: Sequence[Sequence[int]] = mol.GetRingInfo().AtomRings()
+        atoms = list(map(mol.GetAtomWithIdx, range(len(matrix)) if order is None else order))
+        if order is not None:
+            written = list(order)
+            matrix = matrix[written][:, written]
+            place = {a: k for k, a in enumerate(order)}
+            rings = [[place[a] for a in ring] for ring in rings]
         neighbours: list[list[int]] = [[] for _ in atoms]
         orders: list[list[float]] = [[] for _ in atoms]
-        stated = []
-        begin, end = map(Chem.Bond.GetBeginAtomIdx, bonds), map(Chem.Bond.GetEndAtomIdx, bonds)
-        for bond, a, b, order in zip(bonds, begin, end, map(Chem.Bond.GetBondTypeAsDouble, bonds), strict=True):
+        begin, end = matrix.nonzero()
+        for a, b, bond in zip(begin.tolist(), end.tolist(), matrix[begin, end].tolist(), strict=True):
             neighbours[a].append(b)
-            neighbours[b].append(a)
-            orders[a].append(order)
-            orders[b].append(order)
-            if stereo and order == 2.0 and bond.GetStereo() > Chem.BondStereo.STEREOANY:
-                stated.append(bond)
-        rings = mol.GetRingInfo().AtomRings()
+            orders[a].append(bond)
+        cycles = tuple(sorted(map(_turned, rings), key=lambda ring: (len(ring), ring)))
         graph = cls(
             list(map(Chem.Atom.GetAtomicNum, atoms)),
             list(map(Chem.Atom.GetFormalCharge, atoms)),
@@ -72,14 +80,18 @@ class Graph:
             list(map(Chem.Atom.GetIsAromatic, atoms)),
             neighbours,
             orders,
-            rings,
-            _smallest_ring(len(atoms), rings),
+            cycles,
+            _smallest_ring(len(atoms), cycles),
         )
-        for bond in stated:
-            graph.double_stereo[bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()] = _cis_trans(bond, neighbours)
-        graph.double_stereo.update(_held_cis(graph))
-        if stereo and rings and any(atom.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED for atom in atoms):
-            graph.side = _ring_sides(mol, rings)
+        if stereo:
+            for bond in mol.GetBonds():
+                if bond.GetBondType() == Chem.BondType.DOUBLE and bond.GetStereo() > Chem.BondStereo.STEREOANY:
+                    pair = bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()
+                    graph.double_stereo[pair] = _cis_trans(bond, neighbours)
+        if cycles:
+            graph.double_stereo.update(_held_cis(graph))
+            if stereo and any(atom.GetChiralTag() != Chem.ChiralType.CHI_UNSPECIFIED for atom in atoms):
+                graph.side = _ring_sides(mol, cycles)
         return graph
 
     def order(self, a: int, b: int) -> float:
@@ -118,6 +130,13 @@ class Graph:
             if b != start:
                 dist[b] = -1
         return dist
+
+
+def _turned(ring: Sequence[int]) -> tuple[int, ...]:
+    """A ring from its lowest atom on, in the direction of that atom's lower neighbour."""
+    k = ring.index(min(ring))
+    turned = (*ring[k:], *ring[:k])
+    return turned if turned[1] < turned[-1] else (turned[0], *turned[:0:-1])
 
 
 def _smallest_ring(n: int, rings: tuple[tuple[int, ...], ...]) -> list[int]:

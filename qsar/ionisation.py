@@ -19,7 +19,7 @@ from functools import cache
 import numpy as np
 from numpy.typing import NDArray
 
-from qsar.descriptors import Molecule, SiteView, site_descriptors
+from qsar.descriptors import Molecule, SiteView, rounded, site_descriptors
 from qsar.structures import Acid
 
 Floats = NDArray[np.float64]
@@ -78,7 +78,7 @@ def edge_descriptors(acid: Acid) -> Floats:
     ndarray, shape (n_edges, n_descriptors)
         In the order of :func:`cube`.
     """
-    return np.array([site_descriptors(view) for view in edge_views(acid)])
+    return rounded([site_descriptors(view) for view in edge_views(acid)])
 
 
 def edge_views(acid: Acid) -> list[SiteView]:

@@ -24,11 +24,14 @@ def configurations(acid: Acid) -> tuple[list[Acid], str]:
     note : str
         What was left open, for the user; empty where nothing is.
     """
-    if len(acid.sites) == 1 and not _double_bonds_outside_rings(acid):
+    outside = _double_bonds_outside_rings(acid)
+    if len(acid.sites) == 1 and not outside:
+        return [acid], ""
+    ring_pairs = _open_ring_pairs(acid)
+    if not outside and not ring_pairs:
         return [acid], ""
     mol = Chem.Mol(acid.mol)
     bonds = _open_double_bonds(mol, acid)
-    ring_pairs = _open_ring_pairs(acid)
     if not bonds and not ring_pairs:
         return [acid], ""
     if ring_pairs:
@@ -51,13 +54,16 @@ def configurations(acid: Acid) -> tuple[list[Acid], str]:
 
 
 def _double_bonds_outside_rings(acid: Acid) -> bool:
-    """Whether there is any C=C that may be E or Z; told from the graph, which is quicker than asking RDKit."""
+    """Whether there is any C=C that may be E or Z and does not say; told from the graph, quicker than by RDKit."""
     graph = acid.graph
+    stated = graph.double_stereo
     for a, orders in enumerate(graph.orders):
-        if 2.0 not in orders or graph.numbers[a] != 6:
+        if 2.0 not in orders or graph.numbers[a] != 6 or graph.hydrogens[a] > 1:
             continue
         for b, order in zip(graph.neighbours[a], orders, strict=True):
-            if order == 2.0 and graph.numbers[b] == 6 and not any(a in ring and b in ring for ring in graph.rings):
+            if order != 2.0 or graph.numbers[b] != 6 or graph.hydrogens[b] > 1 or (a, b) in stated or (b, a) in stated:
+                continue
+            if not any(a in ring and b in ring for ring in graph.rings):
                 return True
     return False
 

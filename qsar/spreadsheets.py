@@ -114,7 +114,7 @@ def open_table(path: Path, wanted: Sequence[str], note: Callable[[str], None] = 
     """
     names = frozenset(name.casefold() for name in wanted)
     if path.suffix.lower() in WORKBOOKS:
-        with _open_workbook(path, names) as table:
+        with _open_workbook(path, names, note) as table:
             yield table
         return
     with open_text(path, note) as handle:
@@ -288,7 +288,7 @@ class _Records:
 
 
 @contextmanager
-def _open_workbook(path: Path, wanted: frozenset[str]) -> Iterator[Table]:
+def _open_workbook(path: Path, wanted: frozenset[str], note: Callable[[str], None]) -> Iterator[Table]:
     import openpyxl  # slow to import, and most inputs are text
     from openpyxl.utils.exceptions import InvalidFileException
 
@@ -300,13 +300,15 @@ def _open_workbook(path: Path, wanted: frozenset[str]) -> Iterator[Table]:
     except (zipfile.BadZipFile, InvalidFileException, KeyError, ValueError) as problem:
         raise UserError("not an Excel workbook, damaged or protected; save it as .xlsx or CSV") from problem
     try:
-        yield _choose_sheet(book, wanted)
+        yield _choose_sheet(book, wanted, note)
     finally:
         book.close()
 
 
-def _choose_sheet(book: Any, wanted: frozenset[str]) -> Table:
-    first: Table | None = None
+def _choose_sheet(book: Any, wanted: frozenset[str], note: Callable[[str], None]) -> Table:
+    """The first sheet with a wanted column, else the first that is not empty; the others are said to be left aside."""
+    chosen: Table | None = None
+    fitting: list[str] = []
     for sheet in book.worksheets:
         sheet.reset_dimensions()  # some programs write a wrong size
         rows = _sheet_rows(sheet)
@@ -315,11 +317,15 @@ def _choose_sheet(book: Any, wanted: frozenset[str]) -> Table:
             continue
         table = Table(tuple(header.cells), _padded(rows, len(header.cells)))
         if wanted.intersection(name.casefold() for name in table.columns):
-            return table
-        first = first or table
-    if first is None:
+            chosen = chosen if fitting else table
+            fitting.append(sheet.title)
+        chosen = chosen or table
+    if chosen is None:
         raise UserError("the workbook is empty")
-    return first
+    if len(fitting) > 1:
+        others = ", ".join(f"'{title}'" for title in fitting[1:])
+        note(f"sheet '{fitting[0]}' is read; {others} left aside: save a sheet as a file of its own to read it")
+    return chosen
 
 
 def _sheet_rows(sheet: Any) -> Iterator[TableRow]:

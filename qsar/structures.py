@@ -6,7 +6,7 @@ Everything downstream works on :class:`Acid`; nothing downstream parses SMILES a
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 
 from rdkit import Chem, RDLogger
@@ -35,32 +35,44 @@ class Acid:
     smiles : str
         Canonical isomeric SMILES of the acid form (carboxyl groups protonated, other groups uncharged
         unless the charge is permanent).
-    mol : rdkit.Chem.Mol
-        The molecule without explicit hydrogens.
+    drawn : rdkit.Chem.Mol
+        The molecule without explicit hydrogens, its atoms in any order.
     sites : tuple of int
-        Atom indices of the carboxyl carbons, in atom order.
+        Atom indices of the carboxyl carbons in `mol`, in atom order.
     notes : tuple of str
         Each act on the structure, as a sentence for the user.
+    order : tuple of int or None
+        Atoms of `drawn` in the order of `smiles`; None where they stand in it already.
     """
 
     smiles: str
-    mol: Chem.Mol
+    drawn: Chem.Mol
     sites: tuple[int, ...]
     notes: tuple[str, ...] = field(default=())
+    order: tuple[int, ...] | None = None
+
+    @cached_property
+    def mol(self) -> Chem.Mol:
+        """The molecule with its atoms in the order of `smiles`, whatever order they were read in."""
+        return self.drawn if self.order is None else Chem.MolFromSmiles(self.smiles)
 
     @cached_property
     def graph(self) -> Graph:
-        """Atoms and bonds as plain lists, read once."""
-        return Graph.from_mol(self.mol, stereo=any(mark in self.smiles for mark in "@/\\"))
+        """Atoms and bonds as plain lists in the order of `mol`, read once."""
+        return Graph.from_mol(self.drawn, stereo=_has_stereo(self.smiles), order=self.order)
 
     def __reduce__(self) -> tuple[object, ...]:
         return acid_from_smiles_and_notes, (self.smiles, self.notes)
 
 
+def _has_stereo(smiles: str) -> bool:
+    return "@" in smiles or "/" in smiles or "\\" in smiles
+
+
 def acid_from_smiles_and_notes(smiles: str, notes: tuple[str, ...]) -> Acid:
     """Rebuild an acid in another process from its canonical SMILES (`notes` are kept as they were)."""
     acid = read_acid(smiles)
-    return Acid(acid.smiles, acid.mol, acid.sites, notes)
+    return replace(acid, notes=notes)
 
 
 def read_acid(smiles: str) -> Acid:
@@ -112,9 +124,15 @@ def _plain_parameters(*, sanitize: bool) -> Chem.SmilesParserParams:
 
 
 _WITH_STEREO, _WITHOUT_STEREO = _plain_parameters(sanitize=True), _plain_parameters(sanitize=False)
-# What a canonical SMILES does not depend on.
-_NOT_FOR_SMILES = Chem.SanitizeFlags.SANITIZE_SETCONJUGATION | Chem.SanitizeFlags.SANITIZE_SETHYBRIDIZATION
-_FOR_SMILES = int(Chem.SanitizeFlags.SANITIZE_ALL) & ~int(_NOT_FOR_SMILES)
+# All that a plain SMILES without stereo marks needs. Other ways to write nitro groups and the like fail on valence and
+# take the general way.
+_ENOUGH = int(
+    Chem.SanitizeFlags.SANITIZE_PROPERTIES
+    | Chem.SanitizeFlags.SANITIZE_SYMMRINGS
+    | Chem.SanitizeFlags.SANITIZE_KEKULIZE
+    | Chem.SanitizeFlags.SANITIZE_SETAROMATICITY
+    | Chem.SanitizeFlags.SANITIZE_ADJUSTHS
+)
 
 
 def _plain_acid(text: str) -> Acid | None:
@@ -122,33 +140,59 @@ def _plain_acid(text: str) -> Acid | None:
 
     What is wrong is found, and said, by the general way through :func:`acid_from_mol`.
     """
-    stereo = "@" in text or "/" in text or "\\" in text
-    mol = _plain_mol(text, stereo, _FOR_SMILES)
+    if _has_stereo(text):
+        return _plain_acid_with_stereo(text)
+    mol = Chem.MolFromSmiles(text, _WITHOUT_STEREO)
+    if mol is None or not 0 < mol.GetNumAtoms() <= MAX_HEAVY_ATOMS:
+        return None
+    if Chem.SanitizeMol(mol, _ENOUGH, catchErrors=True) != Chem.SanitizeFlags.SANITIZE_NONE:
+        return None
+    smiles = Chem.MolToSmiles(mol)
+    order = tuple(map(int, mol.GetProp("_smilesAtomOutputOrder")[1:-1].rstrip(",").split(",")))
+    graph = Graph.from_mol(mol, stereo=False, order=order)
+    sites = _plain_sites(graph)
+    if sites is None:
+        return None
+    acid = Acid(smiles, mol, sites, (), order)
+    acid.__dict__["graph"] = graph  # it is needed anyhow, and has been read already
+    return acid
+
+
+def _plain_sites(graph: Graph) -> tuple[int, ...] | None:
+    """Carboxyl carbons; None where there is none, or anything that :func:`_carboxyl_sites` has a word about."""
+    sites = []
+    for carbon, (number, orders) in enumerate(zip(graph.numbers, graph.orders, strict=True)):
+        if number == 8 and 8 in (graph.numbers[b] for b in graph.neighbours[carbon]):
+            return None
+        if number != 6 or 2.0 not in orders or graph.aromatic[carbon]:
+            continue
+        acyl = hydroxyl = 0
+        others = []
+        for b, order in zip(graph.neighbours[carbon], orders, strict=True):
+            if graph.numbers[b] == 8 and len(graph.neighbours[b]) == 1:
+                acyl += order == 2.0
+                hydroxyl += order == 1.0
+            else:
+                others.append(b)
+        if acyl != 1 or not hydroxyl:
+            continue
+        if hydroxyl > 1 or (others and graph.numbers[others[0]] != 6):
+            return None
+        sites.append(carbon)
+    return tuple(sites) if 0 < len(sites) <= MAX_SITES else None
+
+
+def _plain_acid_with_stereo(text: str) -> Acid | None:
+    mol = Chem.MolFromSmiles(text, _WITH_STEREO)
     if mol is None or not 0 < mol.GetNumAtoms() <= MAX_HEAVY_ATOMS:
         return None
     if "[C" in text and any(mol.GetAtomWithIdx(a).GetNumRadicalElectrons() for a in range(mol.GetNumAtoms())):
         return None
-    smiles = Chem.MolToSmiles(mol)
-    if smiles == text and not stereo:
-        Chem.SetConjugation(mol)
-        Chem.SetHybridization(mol)
-    else:
-        mol = _plain_mol(smiles, stereo)  # canonical atom order, as in `acid_from_mol`
+    mol = Chem.MolFromSmiles(Chem.MolToSmiles(mol), _WITH_STEREO)  # canonical atom order, as in `acid_from_mol`
     if mol is None:
         return None
-    if stereo:  # writing what was read may settle stereo marks once more
-        smiles = Chem.MolToSmiles(mol)
+    smiles = Chem.MolToSmiles(mol)  # writing what was read may settle stereo marks once more
     return Acid(smiles, mol, _carboxyl_sites(mol))
-
-
-def _plain_mol(text: str, stereo: bool, steps: int = int(Chem.SanitizeFlags.SANITIZE_ALL)) -> Chem.Mol | None:
-    """Parse a SMILES; where it states no configuration, what concerns that is left out."""
-    if stereo:
-        return Chem.MolFromSmiles(text, _WITH_STEREO)
-    mol = Chem.MolFromSmiles(text, _WITHOUT_STEREO)
-    if mol is None or Chem.SanitizeMol(mol, steps, catchErrors=True) != Chem.SanitizeFlags.SANITIZE_NONE:
-        return None
-    return mol
 
 
 def acid_from_mol(mol: Chem.Mol) -> Acid:

@@ -31,7 +31,7 @@ _NAMES = """
 *S(N)(=O)=O sulfamoyl|*S(=O)(=O)O sulfonate|*S(=O)(=O)N(C)C dimethylsulfamoyl|*NS(C)(=O)=O methylsulfonamido
 *P(=O)(O)O phosphonate|*S(=O)=O sulfonyl|*S=O sulfinyl|*=O oxo|*=S thioxo|*=N imino|*=NO hydroxyimino
 *=NOC methoxyimino|*=C methylidene|*=CC ethylidene|*[N+]([O-])=O nitro|*S(F)(F)(F)(F)F pentafluorosulfanyl
-*B(O)O borono|*[Si](C)(C)C trimethylsilyl|*[SiH3] silyl|*[Se]C methylselanyl|*[SeH] selanyl
+*N=C=O isocyanato|*B(O)O borono|*[Si](C)(C)C trimethylsilyl|*[SiH3] silyl|*[Se]C methylselanyl|*[SeH] selanyl
 *C methyl|*CC ethyl|*CCC propyl|*C(C)C isopropyl|*CCCC butyl|*CC(C)C isobutyl|*C(C)CC sec-butyl|*C(C)(C)C tert-butyl
 *CCCCC pentyl|*CCC(C)C isopentyl|*CC(C)(C)C neopentyl|*C(C)(C)CC tert-pentyl|*CCCCCC hexyl|*CCCCCCC heptyl
 *CCCCCCCC octyl|*CCCCCCCCC nonyl|*CCCCCCCCCC decyl|*CCCCCCCCCCCC dodecyl

@@ -7,6 +7,7 @@ to lactones, beta-keto acids lose CO2, long chains form micelles.
 from __future__ import annotations
 
 import pytest
+from benchmarks.many_acids import LIMIT, acid
 
 from qsar.advisories import Advisory, advise, advisories
 from qsar.structures import read_acid
@@ -71,3 +72,11 @@ def test_plain_acids_need_no_advice(smiles: str) -> None:
 
 def test_advice_does_not_depend_on_how_the_acid_was_written() -> None:
     assert names("[O-]C(=O)C(=O)C.[Na+]") == names("CC(=O)C(=O)O")
+
+
+def test_leaving_out_patterns_that_cannot_match_changes_nothing() -> None:
+    smiles = [a.positive for a in advisories()] + [a.negative for a in advisories()]
+    smiles += [acid(number) for number in range(0, LIMIT, LIMIT // 1500)]
+    for one in smiles:
+        read = read_acid(one)
+        assert advise(read.drawn, read.graph) == advise(read.mol)

@@ -129,3 +129,36 @@ def test_the_command_lists_places_and_writes_a_table(
     assert lines[0].startswith("group,smiles,step,pka,low,high,coverage,domain") and len(lines) == 3
     assert main(["analogues", "OC(=O)c1ccccc1", "--at", "elsewhere"]) == 2
     assert "no position" in capsys.readouterr().err
+
+
+def test_the_command_shows_what_is_measured(shipped_model: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """4-Cyanobenzoic acid, 3.55 at 25 °C: CRC Handbook, from memory."""
+    assert main(["analogues", "OC(=O)c1ccccc1", "--at", "para", "--groups", "CN"]) == 0
+    heading, row = capsys.readouterr().out.splitlines()[1:3]
+    start = heading.index("measured")
+    assert float(row[start : start + len("measured")]) == pytest.approx(3.55, abs=0.02)
+
+
+def test_each_acid_of_a_series_comes_once(shipped_model: Path) -> None:
+    acid = read_acid("OC(=O)c1ccccc1")
+    found = analogues(load_model(), acid, find_position(acid, "para"))
+    smiles = [a.smiles for a in found if a.smiles]
+    assert len(smiles) == len(set(smiles)) > 200
+    names = {a.group.name for a in found}
+    assert len({"CO2H", "CO2-"} & names) == 1
+
+
+@pytest.mark.parametrize(
+    ("arguments", "words"),
+    [
+        (["--at", "para", "--low", "5", "--high", "3"], "lies above --high"),
+        (["-o", "a.csv"], "choose a place with --at"),
+        (["--at", "para", "-o", "nowhere/a.csv"], "does not exist"),
+        (["--at", "para", "--step", "0"], "from 1 to 6"),
+    ],
+)
+def test_what_cannot_be_answered_is_refused_at_once(
+    arguments: list[str], words: str, capsys: pytest.CaptureFixture[str]
+) -> None:
+    assert main(["analogues", "OC(=O)c1ccccc1", *arguments]) == 2
+    assert words in capsys.readouterr().err

@@ -13,7 +13,7 @@ import numpy as np
 import pytest
 from benchmarks.many_acids import acids
 
-from qsar import cli
+from qsar import cli, paths
 from qsar.batch import open_model, predict_records
 from qsar.cluster import in_order
 from qsar.errors import UserError
@@ -112,6 +112,55 @@ def test_folds_fitted_on_a_cluster_are_the_same(cluster: tuple[str, list[Popen[s
     for name in ("dual", "slopes", "points"):
         assert np.array_equal(getattr(here, name), getattr(there, name)), name
     assert np.array_equal(here.trees.threshold, there.trees.threshold)
+
+
+def test_train_and_validate_give_the_same_from_a_cluster(
+    cluster: tuple[str, list[Popen[str]]], tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """The whole commands, here and there: one bundle to the last bit, one report to the last figure."""
+    from qsar.model import load_model
+    from qsar.validation import studies
+
+    monkeypatch.setattr("platformdirs.user_cache_dir", lambda *_: str(tmp_path / "cache"))
+    monkeypatch.setattr(studies, "QUICK", studies.Scale(1, 3, "trend", (0.5, 1.0), 1, 2, 1))
+    rows = paths.reference_table().read_text(encoding="utf-8").splitlines()
+    (tmp_path / "own.csv").write_text("\n".join([rows[0], *rows[1::9]]) + "\n", encoding="utf-8")
+    sums, reports = [], []
+    for name, where in (("here", ["--jobs", "2"]), ("there", ["--cluster", cluster[0]])):
+        own = ["--data", str(tmp_path / "own.csv"), "--only", "--folds", "3", "--name", "own"]
+        assert cli.main(["train", *own, "--output", str(tmp_path / name), *where]) == 0
+        sums.append(load_model(tmp_path / name).card["arrays_sha256"])
+        out = ["--model", str(tmp_path / name), "--output", str(tmp_path / f"{name}-report"), "--quick", "--again"]
+        assert cli.main(["validate", *out, *where]) == 0
+        reports.append((tmp_path / f"{name}-report" / "own.csv").read_text(encoding="utf-8"))
+    assert sums[0] == sums[1]
+    assert reports[0] == reports[1]
+    assert len(reports[0].splitlines()) > 100
+
+
+def test_fits_of_a_validation_survive_the_end_of_a_worker(cluster: tuple[str, list[Popen[str]]]) -> None:
+    """The table goes to each worker once, and the one that is left still has it."""
+    from small_models import QUICK, small_model
+
+    from qsar.validation.fits import Fit, problem_of, run
+    from qsar.validation.splits import folds_of_acids
+
+    address, workers = cluster
+    problem = problem_of(small_model().library, QUICK)
+    fold = folds_of_acids(problem.data, 6, 1)
+    wanted = [Fit(f"{k}/{learner}", learner, fold != k) for k in range(6) for learner in ("trend", "forest", "lines")]
+    finished: list[int] = []
+
+    def one_more(count: int) -> None:
+        finished.append(count)
+        if len(finished) == 2:
+            workers[0].kill()
+
+    there = run(problem, wanted, cluster=address, done=one_more)
+    assert workers[0].wait() != 0
+    here = run(problem, wanted)
+    assert list(there) == list(here)
+    assert all(np.array_equal(there[name], here[name]) for name in here)
 
 
 def test_no_scheduler_is_said_in_one_line(monkeypatch: pytest.MonkeyPatch) -> None:

@@ -119,9 +119,9 @@ def test_refusals_say_the_range() -> None:
         cd.davies_term(0.6)
     with pytest.raises(ValueError, match=r"0 to 0\.5 mol/L"):
         cd.davies_term(float("nan"))
-    with pytest.raises(ValueError, match="10 to 40 degC"):
+    with pytest.raises(ValueError, match="10 to 40 °C"):
         cd.van_t_hoff(4.76, 0.0, 5.0)
-    with pytest.raises(ValueError, match="10 to 40 degC"):
+    with pytest.raises(ValueError, match="10 to 40 °C"):
         cd.water_pkw(60.0)
     with pytest.raises(ValueError, match="thermodynamic, mixed, concentration"):
         cd.pka_shift(0, 0.1, "apparent")  # type: ignore[arg-type]

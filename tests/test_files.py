@@ -9,7 +9,7 @@ from pathlib import Path
 import pytest
 
 from qsar.errors import UserError
-from qsar.files import atomic_path
+from qsar.files import atomic_path, check_folder
 
 
 def test_new_file_takes_its_name_at_the_end(tmp_path: Path) -> None:
@@ -78,3 +78,15 @@ def test_unwritable_place_is_one_line(tmp_path: Path, name: str, message: str) -
         pytest.fail("the block must not run")
     assert len(str(caught.value).splitlines()) == 1
     assert not list(tmp_path.iterdir())
+
+
+def test_a_folder_is_made_and_left_empty(tmp_path: Path) -> None:
+    assert check_folder(tmp_path / "a" / "b").is_dir()
+    assert not list((tmp_path / "a" / "b").iterdir())
+
+
+def test_a_file_in_place_of_a_folder_is_one_line(tmp_path: Path) -> None:
+    (tmp_path / "f").write_text("x", encoding="utf-8")
+    for place in (tmp_path / "f", tmp_path / "f" / "below"):
+        with pytest.raises(UserError, match="cannot write to"):
+            check_folder(place)

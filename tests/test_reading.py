@@ -362,3 +362,19 @@ def test_open_rows_are_read(open_data_path: Path, open_data_rows: list[dict[str,
     records = read(open_data_path)
     assert [record.smiles for record in records] == [row["SMILES"].strip() for row in open_data_rows]
     assert not [record for record in records if record.error]
+
+
+def test_sheets_that_are_left_aside_are_named(tmp_path: Path) -> None:
+    """Of a workbook with two sheets of structures the first is read, and the other is not dropped in silence."""
+    book = openpyxl.Workbook()
+    book.active.title = "about"
+    book.active.append(["made by hand"])
+    for title, smiles in (("first", "CC(=O)O"), ("second", "CCC(=O)O")):
+        sheet = book.create_sheet(title)
+        sheet.append(["id", "smiles"])
+        sheet.append([title, smiles])
+    book.save(tmp_path / "two.xlsx")
+    notes: list[str] = []
+    records = list(read_sources([str(tmp_path / "two.xlsx")], on_note=notes.append))
+    assert [record.smiles for record in records] == ["CC(=O)O"]
+    assert len(notes) == 1 and "sheet 'first' is read; 'second' left aside" in notes[0]

@@ -4,12 +4,16 @@ from __future__ import annotations
 
 import pickle
 import random
+from dataclasses import fields
 
 import pytest
+from benchmarks.many_acids import LIMIT
+from benchmarks.many_acids import acid as made_up_acid
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from rdkit import Chem
 
+from qsar.graph import Graph
 from qsar.structures import MAX_HEAVY_ATOMS, MAX_SITES, Acid, StructureError, acid_from_mol, read_acid
 
 # Canonical SMILES are compared as RDKit writes them, so that no spelling is fixed here.
@@ -253,3 +257,21 @@ def test_any_text_is_read_or_refused_in_one_line(text: str) -> None:
         assert "\n" not in str(error)
     else:
         assert acid.sites
+
+
+@given(number=st.integers(0, LIMIT - 1), seed=st.integers(0, 2**32 - 1), kekulised=st.booleans())
+@settings(max_examples=300, deadline=None)
+def test_quick_way_reads_what_the_general_way_reads(number: int, seed: int, kekulised: bool) -> None:
+    """Same structure, sites, atoms, bonds and rings in the same order, however the SMILES is written."""
+    mol = Chem.MolFromSmiles(made_up_acid(number))
+    general = acid_from_mol(mol)
+    order = list(range(mol.GetNumAtoms()))
+    random.Random(seed).shuffle(order)
+    if kekulised:
+        Chem.Kekulize(mol, clearAromaticFlags=True)
+    written = Chem.MolToSmiles(Chem.RenumberAtoms(mol, order), canonical=False, kekuleSmiles=kekulised)
+    quick = read_acid(written)
+    assert (quick.smiles, quick.sites) == (general.smiles, general.sites)
+    for part in fields(Graph):
+        assert getattr(quick.graph, part.name) == getattr(general.graph, part.name), part.name
+    assert Chem.MolToSmiles(quick.mol, canonical=False) == Chem.MolToSmiles(general.mol, canonical=False)

@@ -108,6 +108,13 @@ def test_substituents_have_the_names_that_people_use(smiles: str, names: list[st
     assert sorted(s.label for s in parts.substituents) == sorted(names)
 
 
+def test_an_isocyanate_is_not_called_an_isothiocyanate() -> None:
+    """Prefixes isocyanato and isothiocyanato: IUPAC nomenclature of organic chemistry (2013), P-61.8."""
+    for smiles, name in (("O=C=NCCC(=O)O", "isocyanato"), ("S=C=NCCC(=O)O", "isothiocyanato")):
+        acid = read_acid(smiles)
+        assert [s.name for s in decompose(acid, acid.sites[0]).substituents] == [name]
+
+
 @pytest.mark.parametrize(("smiles", "length"), [("ClCC(=O)O", 2), ("ClCCC(=O)O", 3), ("ClCCCC(=O)O", 4)])
 def test_path_counts_the_bonds_to_the_carboxyl_carbon(smiles: str, length: int) -> None:
     parts, _ = parts_of(smiles)

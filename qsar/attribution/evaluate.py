@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from qsar.attribution.coalitions import Case, Hypothetical, cases
-from qsar.descriptors import Molecule, SiteView, site_descriptors
+from qsar.descriptors import Molecule, SiteView, rounded, site_descriptors
 from qsar.model.domain import OUTSIDE
 from qsar.model.model import evidence_of
 
@@ -97,7 +97,7 @@ class Evaluator:
         """Micro pKa by member, shape (n_members, n), and whether each case is outside the domain."""
         model = self.model
         views = [SiteView(Molecule(c.acid.graph), c.site, c.ionised) for c in block]
-        x = np.array([site_descriptors(view) for view in views])
+        x = rounded([site_descriptors(view) for view in views])
         trend, boosted = model.members.predict(x)
         distances = model.neighbours.distances(model.members, x)
         evidence = evidence_of(

@@ -27,6 +27,7 @@ ALL_PREDICTED, SOME_UNUSABLE = 0, 3
 def add_arguments(parser: argparse.ArgumentParser) -> None:
     """Describe the arguments of the command."""
     from qsar.commands.predict import coverage
+    from qsar.commands.quantities import number
 
     parser.add_argument("smiles", metavar="SMILES", help="the acid to start from")
     parser.add_argument(
@@ -41,8 +42,8 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         help="groups parted by blanks, by name (CF3) or SMILES with * (*C#N), or a file with one a line "
         "(default: all that have tabulated constants)",
     )
-    parser.add_argument("--low", type=float, metavar="PKA", help="only those whose pKa is not below this")
-    parser.add_argument("--high", type=float, metavar="PKA", help="only those whose pKa is not above this")
+    parser.add_argument("--low", type=number, metavar="PKA", help="only those whose pKa is not below this")
+    parser.add_argument("--high", type=number, metavar="PKA", help="only those whose pKa is not above this")
     parser.add_argument("--step", type=int, default=1, metavar="K", help="step that sorts and filters (default: 1)")
     parser.add_argument(
         "--coverage",
@@ -76,8 +77,7 @@ def run(args: argparse.Namespace) -> int:
     from qsar.model import load_model
     from qsar.structures import StructureError, read_acid
 
-    if args.output is not None and args.output.suffix.lower() != ".csv":
-        raise UserError(f"cannot write {args.output}: the extension must be .csv")
+    _check(args)
     try:
         acid = read_acid(args.smiles)
         if args.at is None:
@@ -87,8 +87,6 @@ def run(args: argparse.Namespace) -> int:
         groups = _groups(args.groups)
     except StructureError as reason:
         raise UserError(str(reason)) from reason
-    if not 1 <= args.step <= 6:
-        raise UserError(f"--step {args.step}: a number from 1 to 6 is expected")
     found = analogues(
         load_model(args.model),
         acid,
@@ -104,6 +102,22 @@ def run(args: argparse.Namespace) -> int:
     else:
         _write(args.output, acid, place, found, args.step, args.coverage)
     return SOME_UNUSABLE if any(a.step is None for a in found) else ALL_PREDICTED
+
+
+def _check(args: argparse.Namespace) -> None:
+    """Refuse what cannot be answered before any work is done."""
+    from qsar.files import check_target
+
+    if args.output is not None:
+        if args.output.suffix.lower() != ".csv":
+            raise UserError(f"cannot write {args.output}: the extension must be .csv")
+        if args.at is None:
+            raise UserError(f"--output {args.output}: choose a place with --at first; without it the places are listed")
+        check_target(args.output)
+    if not 1 <= args.step <= 6:
+        raise UserError(f"--step {args.step}: a number from 1 to 6 is expected")
+    if args.low is not None and args.high is not None and args.low > args.high:
+        raise UserError(f"--low {args.low:g} lies above --high {args.high:g}: no pKa can meet both")
 
 
 def _groups(text: str | None) -> list[Group] | None:
@@ -130,15 +144,18 @@ def _list_positions(acid: Acid, places: Sequence[Position]) -> None:
 
 def _show(acid: Acid, place: Position, found: Sequence[Analogue], coverage: float) -> None:
     print(f"{acid.smiles}, {place.label}")
-    print(f"{'group':18} {'pKa':>6}  {f'{100 * coverage:g} % interval':16} {'change':>6}  {'verdict':10} structure")
+    interval = f"{100 * coverage:g} % interval"
+    print(f"{'group':18} {'pKa':>6}  {interval:16} {'change':>6}  {'measured':>8}  {'verdict':10} structure")
     for a in found:
         if a.step is None:
-            print(f"{a.group.name:18} {'':6}  {'':16} {'':6}  {'unusable':10} {a.prediction.error or 'no such step'}")
+            reason = a.prediction.error or "no such step"
+            print(f"{a.group.name:18} {'':6}  {'':16} {'':6}  {'':8}  {'unusable':10} {reason}")
             continue
         s = a.step
         change = "" if a.change is None else f"{a.change:+.2f}"
         interval = f"{s.low:.2f} to {s.high:.2f}"
-        print(f"{a.group.name:18} {s.pka:6.2f}  {interval:16} {change:>6}  {s.domain:10} {a.smiles}")
+        measured = "" if s.measured is None else f"{s.measured:.2f}"
+        print(f"{a.group.name:18} {s.pka:6.2f}  {interval:16} {change:>6}  {measured:>8}  {s.domain:10} {a.smiles}")
     if not found:
         print("no group of the list meets that range of pKa", file=sys.stderr)
 
@@ -146,6 +163,7 @@ def _show(acid: Acid, place: Position, found: Sequence[Analogue], coverage: floa
 def _write(
     target: Path, acid: Acid, place: Position, found: Sequence[Analogue], step: int, coverage: float
 ) -> None:
+    from qsar.commands.quantities import counted
     from qsar.files import atomic_path
     from qsar.writing import UNUSABLE, disarmed
 
@@ -162,3 +180,4 @@ def _write(
             row = (a.group.name, a.smiles, step, *values, acid.smiles, place.key, place.place, place.group)
             row += ("" if s is None else s.model,)
             writer.writerow([disarmed(cell) if isinstance(cell, str) else cell for cell in row])
+    print(f"{target}: {counted(len(found), 'analogue')}", file=sys.stderr)

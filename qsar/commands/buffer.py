@@ -10,14 +10,12 @@ from qsar.commands.decision_options import (
     Row,
     add_acid_arguments,
     check_outputs,
-    not_negative,
-    number,
     numbered,
-    positive,
     show,
     show_acid,
     write_table,
 )
+from qsar.commands.quantities import concentration, not_negative, number, ph, positive
 from qsar.errors import UserError
 from qsar.progress import progress
 
@@ -39,13 +37,13 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     add_acid_arguments(parser)
     parser.add_argument(
         "--acid",
-        type=not_negative,
+        type=concentration,
         metavar="MOL_L",
         help="acid form (default: 0.05 mol/L, or none where --salt is given)",
     )
     parser.add_argument(
         "--salt",
-        type=not_negative,
+        type=concentration,
         metavar="MOL_L",
         help="salt form (default: 0.05 mol/L, or none where --acid is given)",
     )
@@ -78,7 +76,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     )
     parser.add_argument(
         "--ph",
-        type=number,
+        type=ph,
         metavar="PH",
         help="pH that is wanted; without --acid and --salt their ratio is found",
     )

@@ -57,6 +57,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 
 def run(args: argparse.Namespace) -> int:
     """Run the command."""
+    from qsar.files import check_target
     from qsar.model import load
     from qsar.model.registry import resolve
     from qsar.validation.comparison import compare
@@ -67,6 +68,8 @@ def run(args: argparse.Namespace) -> int:
         raise UserError(f"--coverage {args.coverage:g}: give a fraction from 0.5 to 0.99")
     if args.output is not None and args.output.suffix.lower() != ".csv":
         raise UserError(f"--output {args.output}: give a name that ends in .csv")
+    if args.output is not None:
+        check_target(args.output)
     a, b = load(resolve(args.a, args.models)), load(resolve(args.b, args.models))
     if a.card["arrays_sha256"] == b.card["arrays_sha256"]:
         raise UserError(f"{args.a} and {args.b} are the same model")
@@ -138,6 +141,11 @@ def _shared(args: argparse.Namespace, a: Model, b: Model) -> list[Pair]:
     return pairs
 
 
+def _share(chance: float) -> str:
+    """A small probability in words: nothing is impossible because it did not come up."""
+    return "less than 0.1%" if chance < 0.0005 else f"{chance:.1%}"
+
+
 def report(c: Comparison) -> list[str]:
     """Lines for people; the verdict comes first."""
     width = max([12, *(len(d.label) for d in (*c.by_family, *c.by_verdict))])
@@ -153,7 +161,7 @@ def report(c: Comparison) -> list[str]:
         lines += [_line(d, width) for d in found]
     lines += [
         "",
-        f"a difference this large comes up in {c.chance:.1%} of random swaps of A and B",
+        f"a difference this large comes up in {_share(c.chance)} of random swaps of A and B",
         f"measured values inside the {c.coverage:.0%} interval: A {c.held[0]:.0%}, B {c.held[1]:.0%}; median width "
         f"A {c.width[0]:.2f}, B {c.width[1]:.2f}",
     ]

@@ -12,6 +12,7 @@ from contextlib import contextmanager
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from qsar.commands.quantities import constants, counted, fraction, not_negative, numbers
 from qsar.errors import UserError
 
 if TYPE_CHECKING:
@@ -35,7 +36,7 @@ def add_acid_arguments(parser: argparse.ArgumentParser) -> None:
     )
     parser.add_argument(
         "--pka",
-        type=numbers,
+        type=constants,
         action="append",
         metavar="PKA",
         help="known pKa at 25 °C and zero ionic strength in place of the model's, once for each acid; "
@@ -94,50 +95,6 @@ def add_acid_arguments(parser: argparse.ArgumentParser) -> None:
     )
 
 
-def _number(text: str) -> float:
-    try:
-        value = float(text)
-    except ValueError:
-        value = float("nan")
-    if not abs(value) < 1e6:
-        raise argparse.ArgumentTypeError(f"{text!r} is not a number")
-    return value
-
-
-def numbers(text: str) -> tuple[float, ...]:
-    """Read numbers parted by commas; raises ArgumentTypeError for anything else."""
-    return tuple(_number(part) for part in text.split(","))
-
-
-def number(text: str) -> float:
-    """Read a finite number; raises ArgumentTypeError for anything else."""
-    return _number(text)
-
-
-def not_negative(text: str) -> float:
-    """Read a number that is zero or more; raises ArgumentTypeError for anything else."""
-    value = _number(text)
-    if value < 0:
-        raise argparse.ArgumentTypeError(f"{text!r} is below zero")
-    return value
-
-
-def positive(text: str) -> float:
-    """Read a number above zero; raises ArgumentTypeError for anything else."""
-    value = _number(text)
-    if value <= 0:
-        raise argparse.ArgumentTypeError(f"{text!r} is not above zero")
-    return value
-
-
-def fraction(text: str) -> float:
-    """Read a fraction between 0 and 1, both excluded; raises ArgumentTypeError for anything else."""
-    value = _number(text)
-    if not 0 < value < 1:
-        raise argparse.ArgumentTypeError(f"{text!r} is not a fraction between 0 and 1, such as 0.9 for 90 %")
-    return value
-
-
 @contextmanager
 def refusals() -> Iterator[None]:
     """Turn a refusal of the calculation into an error of the user, in one line."""
@@ -172,20 +129,20 @@ class Acids:
         from qsar.decisions.steps import at_temperature, given_steps
 
         args = self._args
-        constants: Sequence[tuple[float, ...]] = args.pka or ()
+        given: Sequence[tuple[float, ...]] = args.pka or ()
         if not args.sources:
-            if not constants:
+            if not given:
                 raise UserError("no acid: give a SMILES string, a file, or --pka")
             named = [
-                given_steps(_name(args, i, len(constants)), pka, args.pka_sd, args.coverage, args.charge)
-                for i, pka in enumerate(constants)
+                given_steps(_name(args, i, len(given)), pka, args.pka_sd, args.coverage, args.charge)
+                for i, pka in enumerate(given)
             ]
         else:
-            named = self._from_sources(constants)
+            named = self._from_sources(given)
         with refusals():
             return [at_temperature(acid, args.temperature, args.enthalpy) for acid in named]
 
-    def _from_sources(self, constants: Sequence[tuple[float, ...]]) -> list[AcidSteps]:
+    def _from_sources(self, given: Sequence[tuple[float, ...]]) -> list[AcidSteps]:
         from dataclasses import replace
 
         from qsar.decisions.acids import steps_of_many
@@ -205,13 +162,14 @@ class Acids:
             records.append(record if record.where else replace(record, id=record.smiles))
         if not records:
             return []
-        if constants and len(constants) != len(records):
+        if given and len(given) != len(records):
             raise UserError(
-                f"--pka is given {len(constants)} times for {len(records)} acids; give it once for each"
+                f"--pka is given {counted(len(given), 'time')} for {counted(len(records), 'acid')}; give it once "
+                "for each, in order"
             )
         if args.name and len(records) == 1:
             records[0] = replace(records[0], id=args.name)
-        overrides: list[Sequence[float] | None] = list(constants) or [None] * len(records)
+        overrides: list[Sequence[float] | None] = list(given) or [None] * len(records)
         outcomes = steps_of_many(records, args.coverage, overrides, args.pka_sd, args.model)
         return [outcome.acid for outcome in outcomes if self._usable(outcome) and outcome.acid is not None]
 

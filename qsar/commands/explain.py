@@ -11,6 +11,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from qsar.commands.predict import coverage, say
+from qsar.commands.quantities import counted
 from qsar.errors import UserError
 from qsar.files import atomic_path
 from qsar.progress import progress
@@ -144,7 +145,7 @@ def run(args: argparse.Namespace) -> int:
         own = len({s for s in model.library.smiles if s})
         with progress(lambda: own, "acids of the model's own table", wanted=wanted) as advance:
             write_report(report, model, found.records, found.answers, args.coverage, done=advance)
-        say(f"{report}: report on {len(found.records):,} inputs")
+        say(f"{report}: report on {counted(len(found.records), 'input')}")
     _summarise(found, folder)
     return found.status
 
@@ -153,6 +154,8 @@ def _make_folder(folder: Path) -> None:
     try:
         folder.mkdir(parents=True, exist_ok=True)
     except OSError as problem:
+        if folder.exists():
+            raise UserError(f"cannot write to {folder}: it is a file; give the name of a folder") from problem
         raise UserError(f"cannot write to the folder {folder}: {problem.strerror or problem}") from problem
 
 
@@ -253,4 +256,4 @@ def _summarise(found: _Answers, folder: Path | None) -> None:
         say(f"acidity: and {len(problems) - _SHOWN_PROBLEMS:,} more: the rows without a step")
     if folder is not None and found.records:
         refused = f"; {len(problems):,} could not be used" if problems else ""
-        say(f"{folder / 'contributions.csv'}: {len(found.records):,} inputs{refused}")
+        say(f"{folder / 'contributions.csv'}: {counted(len(found.records), 'input')}{refused}")

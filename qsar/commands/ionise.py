@@ -11,17 +11,14 @@ from qsar.commands.decision_options import (
     Row,
     add_acid_arguments,
     check_outputs,
-    fraction,
-    not_negative,
-    number,
     numbered,
-    positive,
     refusals,
     show,
     show_acid,
     show_table,
     write_table,
 )
+from qsar.commands.quantities import fraction, not_negative, number, ph, positive
 from qsar.errors import UserError
 from qsar.progress import progress
 
@@ -55,14 +52,14 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         metavar="LOGP",
         help="log P of the uncharged form for log D (default: estimated by Crippen's atom contributions)",
     )
-    parser.add_argument("--from-ph", type=number, default=0.0, metavar="PH", help="first pH (default: 0)")
-    parser.add_argument("--to-ph", type=number, default=14.0, metavar="PH", help="last pH (default: 14)")
+    parser.add_argument("--from-ph", type=ph, default=0.0, metavar="PH", help="first pH (default: 0)")
+    parser.add_argument("--to-ph", type=ph, default=14.0, metavar="PH", help="last pH (default: 14)")
     parser.add_argument(
         "--ph-step", type=positive, default=0.1, metavar="PH", help="step of pH (default: 0.1)"
     )
     parser.add_argument(
         "--at-ph",
-        type=number,
+        type=ph,
         metavar="PH",
         help="ask whether the acid is ionised at this pH, and how sure that is",
     )
@@ -92,6 +89,8 @@ def run(args: argparse.Namespace) -> int:
 
     from qsar.decisions.speciation import log_p_of, speciation
 
+    if args.to_ph <= args.from_ph:
+        raise UserError(f"--to-ph {args.to_ph:g} must lie above --from-ph {args.from_ph:g}")
     points = (args.to_ph - args.from_ph) / args.ph_step
     if not 1 <= points <= _MOST_POINTS:
         raise UserError(
@@ -124,12 +123,12 @@ def run(args: argparse.Namespace) -> int:
 def _rows(result: Speciation) -> Iterator[Row]:
     """One row for each pH and state."""
     acid, share, charge, log_d = result.acid, result.fraction, result.charge, result.log_d
-    for i, ph in enumerate(result.ph):
+    for i, at_ph in enumerate(result.ph):
         for lost, z in enumerate(acid.charges):
             yield {
                 "id": acid.name,
                 "smiles": acid.smiles,
-                "ph": float(ph),
+                "ph": float(at_ph),
                 "state": lost,
                 "charge": int(z),
                 "fraction": float(share.value[i, lost]),

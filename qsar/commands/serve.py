@@ -118,6 +118,6 @@ def _listen(host: str, port: int) -> socket.socket:
         listener.listen(256)  # who reads the address that is printed may connect at once
     except OSError as problem:
         raise UserError(
-            f"cannot listen on {host}:{port} ({problem.strerror or problem}); choose another --port"
+            f"cannot listen on {host}:{port} ({problem.strerror or problem}); choose another --host or --port"
         ) from problem
     return listener

@@ -9,6 +9,7 @@ from datetime import date
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from qsar.commands.validate import processes
 from qsar.errors import UserError
 
 if TYPE_CHECKING:
@@ -61,6 +62,9 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         help="members of the ensemble, each blind to one share of the acids (default: 10); fewer train faster",
     )
     parser.add_argument(
+        "--jobs", type=processes, default=1, metavar="N", help="number of processes that fit the folds (default: 1)"
+    )
+    parser.add_argument(
         "--cluster",
         metavar="ADDRESS",
         help="fit the folds on a running Dask cluster, such as tcp://host:8786 (needs the package distributed)",
@@ -86,15 +90,20 @@ class _Inputs:
 
 def run(args: argparse.Namespace) -> int:
     """Train and save."""
+    from qsar.files import check_folder
     from qsar.model.registry import Registry, check_name
 
     _check(args)
     name = check_name(args.name or (args.output or args.data or Path("reference")).stem.removesuffix("_clean"))
     registry = None if args.output else Registry(args.models)
     if registry is not None and registry.is_taken(name):
-        raise UserError(f"a model {name} exists; choose another --name, or `acidity models delete {name}` first")
+        own = (registry.folder / name).exists()
+        instead = f", or `acidity models delete {name}` first" if own else ""
+        raise UserError(f"a model {name} exists; choose another --name{instead}")
     inputs = _inputs(args)
     settings = _settings(args, len({m.acid.smiles for m in inputs.measurements}))
+    if args.output is not None:
+        check_folder(args.output)
     target = args.output or registry.folder / name  # type: ignore[union-attr]
     cache = target.parent / f".{target.name}.folds"
     model = _train(args, inputs, settings, name, cache)
@@ -212,6 +221,7 @@ def _train(args: argparse.Namespace, inputs: _Inputs, settings: Settings, name: 
             lambda t: say(f"acidity: note: {t}"),
             inputs.reference_acids,
             args.cluster,
+            args.jobs,
         )
     return assemble(data, members, fold, name, _provenance(args, inputs), withhold_structures=args.withhold_structures)
 

@@ -24,7 +24,12 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     )
     parser.add_argument("--name", help="name of the report's files (default: the model's name)")
     parser.add_argument("--quick", action="store_true", help="fewer repeats, for a first look")
-    parser.add_argument("--jobs", type=_jobs, default=2, metavar="N", help="number of processes (default: 2)")
+    parser.add_argument("--jobs", type=processes, default=2, metavar="N", help="number of processes (default: 2)")
+    parser.add_argument(
+        "--cluster",
+        metavar="ADDRESS",
+        help="make the fits on a running Dask cluster instead, such as tcp://host:8786 (needs the package distributed)",
+    )
     parser.add_argument("--again", action="store_true", help="forget what an interrupted run had finished")
     parser.add_argument(
         "--open-data",
@@ -39,7 +44,14 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     )
 
 
-def _jobs(text: str) -> int:
+def processes(text: str) -> int:
+    """Read a number of processes.
+
+    Raises
+    ------
+    argparse.ArgumentTypeError
+        If it is not a whole number from 1 to 256.
+    """
     if not text.isdigit() or not 1 <= int(text) <= 256:
         raise argparse.ArgumentTypeError(f"{text!r}: give the number of processes, from 1 to 256")
     return int(text)
@@ -47,11 +59,18 @@ def _jobs(text: str) -> int:
 
 def run(args: argparse.Namespace) -> int:
     """Validate."""
+    from qsar.files import check_folder
     from qsar.model import load_model
 
     if args.train_on_it and not args.open_data:
         raise UserError("--train-on-it needs --open-data DIR")
+    if args.cluster and args.open_data:
+        raise UserError("--cluster makes the fits of a report; leave it out with --open-data")
+    if args.name is not None and (not args.name.strip() or Path(args.name).name != args.name):
+        raise UserError(f"--name {args.name}: give a name without a folder; --output names the folder")
     model = load_model(args.model)
+    if not args.open_data or args.train_on_it:
+        check_folder(args.output)  # before minutes of work
     if args.open_data and args.train_on_it:
         return _with_open_rows(model, args)
     if args.open_data:
@@ -103,20 +122,19 @@ def _report(model: Model, args: argparse.Namespace) -> int:
     from qsar.validation import studies
     from qsar.validation.cache import Cache
     from qsar.validation.fits import problem_of, run
-    from qsar.validation.judged import judge, library_steps
-    from qsar.validation.metrics import LEVELS
+    from qsar.validation.judging import PARTS, judge_table
     from qsar.validation.report import write
 
-    scale = studies.QUICK if args.quick else studies.FULL
     key = f"{model.card['arrays_sha256'][:16]}{'-quick' if args.quick else ''}"
     cache = Cache(Path(platformdirs.user_cache_dir("acidity")) / "validation" / key)
     if args.again:
         cache.clear()
     problem = problem_of(model.library, model.members.settings)
+    scale = studies.QUICK if args.quick else studies.scale_of(problem.data)
     fits = studies.all_fits(problem, scale)
-    with progress(lambda: len(fits) + len(LEVELS) + 1, "parts", wanted=True) as done:
-        results = run(problem, fits, cache, args.jobs, done)
-        judged = judge(model, library_steps(model.library), done)
+    with progress(lambda: len(fits) + PARTS, "parts", wanted=True) as done:
+        results = run(problem, fits, cache, args.jobs, done, args.cluster)
+        judged = judge_table(model, done, args.jobs, args.cluster)
     sections = _sections(model, problem.data, judged, scale, results)
     opening = (
         f"Model {model.name} of {model.card['date']}: {model.card['steps']} measured steps of "

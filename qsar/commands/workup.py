@@ -12,17 +12,14 @@ from qsar.commands.decision_options import (
     Row,
     add_acid_arguments,
     check_outputs,
-    fraction,
-    not_negative,
-    number,
     numbered,
-    positive,
     refusals,
     show,
     show_acid,
     show_table,
     write_table,
 )
+from qsar.commands.quantities import counted, fraction, not_negative, number, positive
 from qsar.errors import UserError
 from qsar.progress import progress
 
@@ -151,6 +148,8 @@ def run(args: argparse.Namespace) -> int:
     with refusals():
         bases = [base_named(text) for text in args.base] if args.base else list(BASES)
     usable = _with_log_p(acids, args)
+    if args.window is not None and len(usable) != 2:
+        raise UserError(f"--window is for two acids; {len(usable)} could be used")
     results: list[Workup] = []
     with refusals(), progress(lambda: len(usable), "acids") as advance:
         for acid, log_p in usable:
@@ -167,8 +166,6 @@ def run(args: argparse.Namespace) -> int:
             save(workup_figure(result), numbered(args.plot, position, len(results)))
     if len(results) == 2:
         _two_acids(results, args)
-    elif args.window is not None:
-        raise UserError(f"--window is for two acids; {len(results)} could be used")
     if results:
         _show_notes(results, bases)
     if args.output is not None and results:
@@ -185,7 +182,9 @@ def _with_log_p(acids: Acids, args: argparse.Namespace) -> list[tuple[AcidSteps,
     found = acids.all()
     given: Sequence[float] = args.log_p or ()
     if given and len(given) != len(found):
-        raise UserError(f"--log-p is given {len(given)} times for {len(found)} acids; give it once for each")
+        raise UserError(
+            f"--log-p is given {counted(len(given), 'time')} for {counted(len(found), 'acid')}; give it once for each"
+        )
     pairs = []
     for i, acid in enumerate(found):
         try:
@@ -246,6 +245,10 @@ def _show(result: Workup) -> None:
     interval = f"{100 * result.acid.coverage:g} % interval"
     wanted = f"{100 * job.target:g} % in {job.into}"
     show_table(("base", "pH", "in water", interval, "ionised", "ΔpKa", wanted, "probability"), rows)
+    show(
+        "ΔpKa: constant of the base's conjugate acid less that of the acid. probability: that the base brings "
+        f"{wanted}, given how well the pKa is known."
+    )
     if result.chosen is None:
         show(
             f"No base of this list brings {100 * job.target:g} % into the {job.into} layer in one extraction."

@@ -70,8 +70,10 @@ class Flag:
     def sentence(self) -> str:
         """One line for the user."""
         best = self.explanations[0]
+        row = self.merged.row
+        typed = f" ({row.measured:.2f} before its correction)" if abs(row.pka - row.measured) >= 0.005 else ""
         return (
-            f"pKa {self.merged.row.pka:.2f}, expected {self.expected:.2f} ({self.low:.2f} to {self.high:.2f}); most "
+            f"pKa {row.pka:.2f}{typed}, expected {self.expected:.2f} ({self.low:.2f} to {self.high:.2f}); most "
             f"likely ({best.likelihood:.0%}): {best.suspicion.kind}: {best.suspicion.explanation}"
         )
 

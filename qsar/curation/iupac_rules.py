@@ -13,6 +13,7 @@ from dataclasses import dataclass
 
 from rdkit import Chem
 
+from qsar.basicity import amine_pka
 from qsar.curation.isomer_labels import is_isomer_word
 from qsar.groups import perceive
 from qsar.structures import Acid
@@ -22,6 +23,9 @@ COLDEST, WARMEST = 15.0, 40.0
 
 ZWITTERION_LIMIT = 5.0
 """Below it a constant of an amino acid is that of a carboxyl group, above it that of a cation."""
+
+WEAK_AMINE = ZWITTERION_LIMIT + 0.5
+"""An amine with an estimated pKa below it, the error of the estimate allowed for, may be what a low constant means."""
 
 WEAKEST_SINGLE = 7.0
 """A single COOH is never weaker; a constant above belongs to another proton."""
@@ -146,8 +150,12 @@ _STRONG_BASES = frozenset({"ammonium", "amidinium", "imidazolium"})
 
 def unclear_nitrogen(acid: Acid) -> bool:
     """Whether a nitrogen could lose or take a proton in the range where the carboxyl group does."""
-    for group in perceive(acid.graph):
+    groups = perceive(acid.graph)
+    group_of = {a: group for group in reversed(groups) for a in group.atoms}
+    for group in groups:
         if group.kind in _UNCLEAR_NITROGEN:
+            return True
+        if group.kind == "ammonium" and amine_pka(acid.graph, group.atoms[0], group_of) < WEAK_AMINE:
             return True
         if group.kind == "heteroaryl" and any(acid.graph.numbers[a] == 7 for a in group.atoms):
             return True

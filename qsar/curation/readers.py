@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -20,6 +20,38 @@ MOST_ROWS = 200_000
 IUPAC_COLUMNS = frozenset(("unique_ID", "SMILES", "pka_type", "pka_value"))
 
 
+class StepCell(int):
+    """Number of a row that stands for one step of a wide table, such as ``4:pKa2``.
+
+    As a number it sorts by row and step and is unlike any other cell's; as text it names both.
+
+    Parameters
+    ----------
+    row : int
+        Row as a spreadsheet counts it.
+    step : int
+        1 to 6.
+    """
+
+    row: int
+    step: int
+
+    def __new__(cls, row: int, step: int) -> StepCell:
+        """Make the number of one cell."""
+        cell = super().__new__(cls, 10 * row + step)
+        cell.row, cell.step = row, step
+        return cell
+
+    def __reduce__(self) -> tuple[type[StepCell], tuple[int, int]]:
+        return StepCell, (self.row, self.step)
+
+    def __str__(self) -> str:
+        return f"{self.row}:pKa{self.step}"
+
+    def __format__(self, spec: str) -> str:
+        return format(str(self), spec)
+
+
 @dataclass(frozen=True)
 class RawRow:
     """One row as it came.
@@ -27,7 +59,8 @@ class RawRow:
     Attributes
     ----------
     number : int
-        Row as a spreadsheet counts it (the header is row 1), or entry of an SD file, counted from 1.
+        Row as a spreadsheet counts it (the header is row 1), or entry of an SD file, counted from 1; a `StepCell`
+        where the table has a column for each step.
     cells : dict of str to str
         Text of each field that the table has (see :data:`qsar.curation.columns.ALIASES`).
     original : dict of str to str
@@ -120,16 +153,25 @@ def _table(
                     f"{len(cells)} cells under {len(table.columns)} headers; a decimal comma without quotation "
                     "marks, or a cell too many"
                 )
-            rows.append(
-                RawRow(
-                    row.number,
-                    {field: cells[i] for field, i in place.items()},
-                    dict(zip(table.columns, cells, strict=False)),
-                    None,
-                    error,
-                )
-            )
+            original = dict(zip(table.columns, cells, strict=False))
+            one = RawRow(row.number, {field: cells[i] for field, i in place.items()}, original, None, error)
+            rows.extend(_each_step(one, columns))
     return rows, columns
+
+
+def _each_step(row: RawRow, columns: Columns) -> list[RawRow]:
+    """A row for each filled step of a wide table; one row, without a value, where none is filled."""
+    if not columns.steps or row.error:
+        return [row if not columns.steps else replace(row, number=StepCell(row.number, min(columns.steps)))]
+    filled = [k for k in sorted(columns.steps) if row.original.get(columns.steps[k], "").strip()]
+    return [
+        replace(
+            row,
+            number=StepCell(row.number, k),
+            cells={**row.cells, "pka": row.original.get(columns.steps[k], ""), "step": str(k)},
+        )
+        for k in filled or [min(columns.steps)]
+    ]
 
 
 def _structures(
@@ -151,5 +193,6 @@ def _structures(
         cells = {field: items.get(header, "") for field, header in columns.header.items()}
         cells["smiles"] = record.smiles
         cells.setdefault("name", record.id)
-        rows.append(RawRow(number, cells, {"smiles": record.smiles, **items}, record.mol, record.error))
+        one = RawRow(number, cells, {"smiles": record.smiles, **items}, record.mol, record.error)
+        rows.extend(_each_step(one, columns))
     return rows, columns

@@ -12,7 +12,7 @@ from qsar.decisions.steps import MEASURED_SD, AcidSteps, UnusableAcid, given_ste
 from qsar.reading import Record
 
 if TYPE_CHECKING:
-    from qsar.model.model import Prediction
+    from qsar.model.model import Model, Prediction
     from qsar.structures import Acid
 
 __all__ = ["AcidSteps", "Outcome", "charge_beside_carboxyl", "steps_of", "steps_of_many"]
@@ -21,13 +21,14 @@ __all__ = ["AcidSteps", "Outcome", "charge_beside_carboxyl", "steps_of", "steps_
 def charge_beside_carboxyl(acid: Acid) -> int:
     """Charge of the acid form where its carboxyl protons leave: +1 for glycine, 0 for acetic acid.
 
-    Aliphatic amines, amidines and other strong bases count as protonated, sulfonic and phosphonic acids as
-    singly ionised.
+    Aliphatic amines, amidines and other strong bases count as protonated, ring nitrogen and anilines as the model
+    takes them, sulfonic and phosphonic acids as singly ionised.
     """
-    from qsar.groups import CATIONIC, perceive
+    from qsar.descriptors import Molecule
+    from qsar.groups import CATIONIC
 
     charge = 0
-    for group in perceive(acid.graph):
+    for group in Molecule(acid.graph).groups:
         charge += group.kind in CATIONIC
         charge -= group.kind in ("sulfonate", "phosphonate")
     return charge
@@ -97,6 +98,7 @@ def steps_of_many(
     pka_overrides: Sequence[Sequence[float] | None] | None = None,
     pka_sd: float = MEASURED_SD,
     model_folder: Path | None = None,
+    model: Model | None = None,
 ) -> list[Outcome]:
     """The steps of many inputs with one call of the model; an outcome for each, in order.
 
@@ -108,6 +110,8 @@ def steps_of_many(
         As in `steps_of`.
     pka_overrides : sequence, optional
         Known constants for each record, or None.
+    model : Model, optional
+        A model that is loaded already; `model_folder` does not matter then.
 
     Raises
     ------
@@ -130,7 +134,7 @@ def steps_of_many(
         for structure, override in zip(structures, overrides, strict=True)
         if override is None and not isinstance(structure, str)
     ]
-    answers = iter(_predicted(asked, coverage, model_folder))
+    answers = iter(_predicted(asked, coverage, model_folder, model))
     outcomes = []
     for record, structure, override in zip(records, structures, overrides, strict=True):
         if isinstance(structure, str):
@@ -151,12 +155,13 @@ def steps_of_many(
     return outcomes
 
 
-def _predicted(acids: list[Acid], coverage: float, folder: Path | None) -> list[Prediction]:
+def _predicted(acids: list[Acid], coverage: float, folder: Path | None, model: Model | None) -> list[Prediction]:
     if not acids:
         return []
-    from qsar.model import load_model
+    if model is None:
+        from qsar.model import load_model
 
-    model = load_model() if folder is None else load_model(folder)
+        model = load_model(folder)
     return model.predict(acids, coverage=coverage)
 
 
@@ -178,8 +183,8 @@ def _from_prediction(name: str, prediction: Prediction, coverage: float, charge:
             low.append(value - half)
             high.append(value + half)
             notes.append(
-                f"step {step.step}: measured {value:.2f} from the reference table is used, standard "
-                f"uncertainty {sd:g}{_without(step.pka_without)}"
+                f"step {step.step}: measured {value:.2f} from the model's training table "
+                f"{_source(step.measured_source)}is used, standard uncertainty {sd:g}{_without(step.pka_without)}"
             )
             continue
         pka.append(float(step.pka))
@@ -204,6 +209,10 @@ def _from_prediction(name: str, prediction: Prediction, coverage: float, charge:
     )
 
 
+def _source(key: str) -> str:
+    return f"(source {key}) " if key else ""
+
+
 def _without(value: float | None) -> str:
     return "" if value is None else f"; predicted without it {value:.2f}"
 
@@ -212,7 +221,25 @@ def _charge_note(acid: AcidSteps, structure: Acid) -> tuple[str, ...]:
     if acid.charge_of_acid_form > 0 and len(acid.pka) <= len(structure.sites):
         return (
             "only carboxyl protons are counted: a protonated nitrogen loses its own proton at higher pH "
-            "(aliphatic ammonium near 9 to 11, common practice); give every constant with --pka to "
-            "include it",
+            "(aliphatic ammonium near 9 to 11, pyridinium and anilinium near 4 to 6, common practice); give every "
+            "constant with --pka to include it",
+        )
+    base = _weak_base(structure)
+    if base is not None and len(acid.pka) <= len(structure.sites):
+        return (
+            f"a weakly basic nitrogen takes up a proton below about pH {base:.1f} (estimated): below pH {base + 1:.1f} "
+            "charge, fractions and log D do not hold, and the acid goes into water as a cation; give every constant "
+            "with --pka to include it",
         )
     return ()
+
+
+def _weak_base(structure: Acid) -> float | None:
+    """Estimated pKa of the strongest aniline that is neutral where the carboxyl proton leaves; None without one."""
+    from qsar.basicity import anilinium_pka
+    from qsar.descriptors import Molecule
+
+    groups = Molecule(structure.graph).groups
+    group_of = {a: group for group in reversed(groups) for a in group.atoms}
+    found = [anilinium_pka(structure.graph, g.atoms[0], group_of) for g in groups if g.kind == "amino"]
+    return max((pka for pka in found if pka is not None and pka > 0.0), default=None)

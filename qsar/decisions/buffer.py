@@ -116,7 +116,8 @@ def check_recipe(acid: AcidSteps, recipe: Recipe) -> None:
             f"{acid.name}: concentrations of acid and salt must be zero or more and not both zero"
         )
     if not 1 <= recipe.step <= len(acid.pka):
-        raise ValueError(f"{acid.name}: step {recipe.step} is not among its {len(acid.pka)}")
+        n = len(acid.pka)
+        raise ValueError(f"{acid.name}: no step {recipe.step}; it has {n} step{'' if n == 1 else 's'}")
 
 
 def _solutes(
@@ -217,6 +218,11 @@ def make_buffer(
         notes.append(
             f"ionic strength {strength:.2f} mol/L exceeds the {DAVIES_LIMIT_M:g} mol/L of the Davies "
             "equation; the activity coefficients are those at that limit and the pH may be off by about 0.2"
+        )
+    if not any(first <= ph <= last for first, last in useful):
+        notes.append(
+            f"this recipe makes pH {ph:.2f}, outside the useful range: it is no buffer of {acid.name}, whatever keeps "
+            "its pH"
         )
     return BufferResult(
         acid, recipe, ph, min(float(low), ph), max(float(high), ph), strength,

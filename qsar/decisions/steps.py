@@ -205,13 +205,13 @@ def at_temperature(
     if enthalpy_kj_mol is None:
         values, spread = np.full(n, CARBOXYL_ENTHALPY_KJ_MOL), CARBOXYL_ENTHALPY_SD_KJ_MOL
         note = (
-            f"{temperature_c:g} degC: enthalpy of ionisation not given, {CARBOXYL_ENTHALPY_KJ_MOL:g} ± "
+            f"{temperature_c:g} °C: enthalpy of ionisation not given, {CARBOXYL_ENTHALPY_KJ_MOL:g} ± "
             f"{spread:g} kJ/mol assumed for each carboxyl step (Goldberg, Kishore & Lennen 2002)"
         )
     else:
         values, spread = np.broadcast_to(np.array(enthalpy_kj_mol, dtype=float), (n,)), 0.0
         note = (
-            f"{temperature_c:g} degC: van 't Hoff with {', '.join(f'{v:g}' for v in values)} kJ/mol as given"
+            f"{temperature_c:g} °C: van 't Hoff with {', '.join(f'{v:g}' for v in values)} kJ/mol as given"
         )
     inverse = 1.0 / (temperature_c + ZERO_CELSIUS) - 1.0 / (REFERENCE_C + ZERO_CELSIUS)
     extra = abs(1000.0 * spread / (GAS_CONSTANT * math.log(10.0)) * inverse)

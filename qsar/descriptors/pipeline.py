@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from qsar.descriptors.charge import CHARGE
 from qsar.descriptors.effect import Column, Effect
@@ -32,9 +32,15 @@ def site_descriptors(view: SiteView) -> list[float]:
     Returns
     -------
     list of float, length ``len(NAMES)``
-        Rounded to ten decimals, so that the order of a sum never decides which side of a split a value is on.
+        As the effects give them; see `rounded`.
     """
     values: list[float] = []
     for effect in EFFECTS:
         values.extend(effect.compute(view))
-    return [round(v, 10) if v else v for v in values]  # most are zero
+    return values
+
+
+def rounded(values: ArrayLike) -> NDArray[np.float64]:
+    """Descriptors to ten decimals, so that the order of a sum never decides which side of a split a value is on."""
+    result: NDArray[np.float64] = np.asarray(values, dtype=np.float64).round(10)
+    return result

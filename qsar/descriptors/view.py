@@ -11,7 +11,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from functools import cached_property
 
-from qsar.basicity import pyridinium_pka
+from qsar.basicity import pyridinium_pka, zwitterion_ratio
 from qsar.constants.functional_groups import FunctionalGroup, functional_groups
 from qsar.graph import Graph
 from qsar.groups import WITHDRAWING, Group, perceive
@@ -92,16 +92,18 @@ _PROTONATED_ABOVE = 1.5  # a ring nitrogen weaker than this is neutral where the
 
 
 def _with_basicity(graph: Graph, groups: list[Group]) -> list[Group]:
-    """Take the proton from ring nitrogens that substituents have made too weak a base."""
-    if not any(group.kind == "pyridinium" for group in groups):
+    """Take the proton from ring nitrogens that are too weak a base, and give it to anilines that are strong enough."""
+    if not any(group.kind in ("pyridinium", "amino") for group in groups):
         return groups
     group_of = {a: group for group in reversed(groups) for a in group.atoms}
-    return [
-        Group("heteroaryl", group.atoms)
-        if group.kind == "pyridinium" and pyridinium_pka(graph, group, group_of) < _PROTONATED_ABOVE
-        else group
-        for group in groups
-    ]
+    result = []
+    for group in groups:
+        if group.kind == "pyridinium" and pyridinium_pka(graph, group, group_of) < _PROTONATED_ABOVE:
+            group = Group("heteroaryl", group.atoms)
+        elif group.kind == "amino" and (zwitterion_ratio(graph, group.atoms[0], group_of) or 0.0) > 0.0:
+            group = Group("ammonium", group.atoms)
+        result.append(group)
+    return result
 
 
 def _saturated_carrier(graph: Graph, group: Group) -> int:
@@ -218,6 +220,8 @@ class SiteView:
             if carbon != site:
                 kind = "carboxylate" if carbon in ionised else "carboxyl"
                 self.terms.append(around.oriented(kind, group, carbon))
+        #: What :mod:`qsar.model.domain` asks about, once it has been found.
+        self.features: list[tuple[str, ...]] | None = None
         #: What :mod:`qsar.descriptors.resonance` found on each aromatic system, so that it looks once.
         self.on_rings: dict[tuple[int, int], list[tuple[int, FunctionalGroup, int]]] = {}
 

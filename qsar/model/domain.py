@@ -13,7 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from qsar.basicity import anilinium_pka
+from qsar.basicity import amine_pka, anilinium_pka, pyridinium_pka, zwitterion_ratio
 from qsar.descriptors import SiteView
 from qsar.groups import CATIONIC
 
@@ -40,6 +40,8 @@ def features_seen(view: SiteView) -> list[tuple[str, ...]]:
         ``("group", kind)``, ``("place", kind, bonds)`` for groups up to three bonds away, and
         ``("site", environment)``.
     """
+    if view.features is not None:
+        return view.features
     seen: list[tuple[str, ...]] = []
     for term in [*view.terms, *view.withdrawing]:
         if term is view.alpha_system:
@@ -51,7 +53,8 @@ def features_seen(view: SiteView) -> list[tuple[str, ...]]:
         if term.bonds <= 3:
             seen.append(("place", kind, str(max(term.bonds, 1)), "ring" if view.alpha_system else "chain"))
     seen.append(("site", environment(view)))
-    return seen
+    view.features = list(dict.fromkeys(seen))
+    return view.features
 
 
 def environment(view: SiteView) -> str:
@@ -108,7 +111,7 @@ class Domain:
         less : int
             Acids to take off each count: 1 for an acid that was counted itself.
         """
-        return sum(1.0 / (1.0 + max(self.counts.get(f, 0) - less, 0)) for f in dict.fromkeys(features_seen(view)))
+        return sum(1.0 / (1.0 + max(self.counts.get(f, 0) - less, 0)) for f in features_seen(view))
 
     def judge(self, view: SiteView, expected: float, nearest: str, distance: float) -> tuple[str, list[str]]:
         """Verdict and reasons of one step.
@@ -127,7 +130,7 @@ class Domain:
         level = 0
         reasons: list[str] = []
         away = f"the nearest is {nearest}, {distance:.1f} away"
-        for feature in dict.fromkeys(features_seen(view)):
+        for feature in features_seen(view):
             n = self.counts.get(feature, 0)
             if feature[0] == "group" and n == 0:
                 level = max(level, 2)
@@ -141,10 +144,9 @@ class Domain:
             elif feature[0] == "place" and n == 0 and self.counts.get(("group", feature[1]), 0):
                 level = max(level, 1)
                 reasons.append(f"no measured acid has a {label(feature[1])} group {place(feature)} – {away}")
-        basic = basic_nitrogen(view)
-        if basic:
-            level = 2
-            reasons.append(basic)
+        for doubt, sentence in basic_nitrogen(view):
+            level = max(level, doubt)
+            reasons.append(sentence)
         if expected > self.outside_above:
             level = 2
             reasons.append(f"expected error {expected:.2f}, larger than for 92 % of the measured acids – {away}")
@@ -156,23 +158,50 @@ class Domain:
         return VERDICTS[level], reasons
 
 
-def basic_nitrogen(view: SiteView) -> str:
-    """A sentence where a ring nitrogen or aniline shares the measured constants with the carboxyl group, else ""."""
+_SURE, _LIKELY = 1.0, 0.5  # of log10 of the two forms' ratio, whose estimate errs by about 0.4
+_STRONG_PYRIDINE = 4.0  # a ring nitrogen above it keeps its proton while a carboxyl group loses its own
+_WEAK_AMINE = 5.0  # an amine below it may lose its proton before a carboxyl group does
+_TWO_PROTONS = "a measured constant may belong to the N-H proton"
+
+
+def basic_nitrogen(view: SiteView) -> list[tuple[int, str]]:
+    """What basic nitrogen means for the value: a doubt from 0 (none) to 2 (outside) and a sentence each.
+
+    The form that is predicted is settled by the relationships of :mod:`qsar.basicity`.
+    """
+    if not any(t.kind in ("pyridinium", "imidazolium", "amino", "ammonium") for t in view.terms):
+        return []
+    group_of = {a: group for group in reversed(view.molecule.groups) for a in group.atoms}
+    graph = view.graph
+    found: dict[str, int] = {}
     for term in view.terms:
-        if term.kind in ("pyridinium", "imidazolium"):
-            return (
-                "a basic ring nitrogen ionises near by: the value is for the COOH of the form protonated there, and a "
-                "measured constant may belong to the N-H proton"
-            )
-        if term.kind == "amino":
-            group_of = {a: group for group in reversed(view.molecule.groups) for a in group.atoms}
-            pka = anilinium_pka(view.graph, term.anchor, group_of)
-            if pka is not None and pka > 2.0:
-                return (
-                    f"an aniline ionises near by (estimated pKa {pka:.1f}): the value is for the COOH of the form with "
-                    "a neutral amino group, and a measured constant may belong to the N-H proton"
-                )
-    return ""
+        if term.kind == "imidazolium":
+            found["the value is for the COOH of the imidazolium form"] = 0
+        elif term.kind == "pyridinium":
+            pka = pyridinium_pka(graph, group_of[term.anchor], group_of)
+            sentence = f"the value is for the COOH of the form protonated on ring nitrogen (estimated pKa {pka:.1f})"
+            weak = pka < _STRONG_PYRIDINE
+            found[f"{sentence}; so weak a base may be neutral: {_TWO_PROTONS}" if weak else sentence] = 2 * weak
+        elif term.kind in ("amino", "ammonium"):
+            ratio = zwitterion_ratio(graph, term.anchor, group_of)
+            if ratio is not None:
+                doubt, sentence = _aniline_sentence(ratio, anilinium_pka(graph, term.anchor, group_of))
+                found.update({sentence: doubt} if sentence else {})
+            elif term.kind == "ammonium" and amine_pka(graph, term.anchor, group_of) < _WEAK_AMINE:
+                pka = amine_pka(graph, term.anchor, group_of)
+                found[f"an amine made weak by what it carries (estimated pKa {pka:.1f}) is taken as protonated: "
+                      f"{_TWO_PROTONS}"] = 2  # fmt: skip
+    return [(doubt, sentence) for sentence, doubt in found.items()]
+
+
+def _aniline_sentence(ratio: float, pka: float | None) -> tuple[int, str]:
+    if pka is None or pka < 0.5:
+        return 0, ""  # no base in water
+    form = "whose aniline is protonated" if ratio > 0 else "with a neutral amino group"
+    sentence = f"the value is for the COOH of the form {form} (estimated pKa of the anilinium {pka:.1f})"
+    if abs(ratio) >= _SURE:
+        return 0, sentence
+    return (1 if abs(ratio) >= _LIKELY else 2), f"{sentence}; both forms may be there: {_TWO_PROTONS}"
 
 
 def label(kind: str) -> str:

@@ -24,10 +24,13 @@ if TYPE_CHECKING:
     from collections.abc import Callable
 
 Floats = NDArray[np.float64]
+Ints = NDArray[np.int64]
 
 MOST_EXACT = 3000
 POINTS = 2000
-_ROUNDING = 1e-8  # of the prior variance; keeps the decomposition of nearly equal points positive
+_ROUNDING = 1e-8  # of the prior variance; a point that adds less repeats others
+_JITTER = 1e-10  # of the prior variance; keeps the factor of nearly equal points positive
+_ROWS_AT_ONCE = 2000  # edges that are weighted together; bounds the memory beside the covariance itself
 
 
 def basis(points: Floats, covariance: Callable[[Floats, Floats], Floats]) -> Floats:
@@ -46,32 +49,92 @@ def basis(points: Floats, covariance: Callable[[Floats, Floats], Floats]) -> Flo
     """
     if len(points) <= MOST_EXACT:
         return points
+    found: Floats = points[np.sort(pivots(points, covariance, POINTS))]
+    return found
+
+
+def pivots(points: Floats, covariance: Callable[[Floats, Floats], Floats], most: int) -> Ints:
+    """Rows that a Cholesky decomposition of the covariance takes, each the one that those before it tell least about.
+
+    Parameters
+    ----------
+    points : ndarray, shape (n, d)
+    covariance : callable
+        As in `basis`.
+    most : int
+        How many are wanted.
+
+    Returns
+    -------
+    ndarray of int, shape (m,)
+        In the order taken; fewer than `most` where the rest repeats what is there already.
+
+    Raises
+    ------
+    ValueError
+        If a descriptor is not a finite number.
+    """
+    wrong = np.flatnonzero(~np.isfinite(points).all(axis=1))
+    if len(wrong):
+        raise ValueError(f"row {wrong[0]} holds a descriptor that is not a finite number")
     left = np.array([covariance(p[None], p[None])[0, 0] for p in points])  # variance not yet told
     least = _ROUNDING * left.max()
-    factor = np.empty((POINTS, len(points)))
+    most = min(most, len(points))
+    factor = np.empty((most, len(points)))
     chosen: list[int] = []
-    while len(chosen) < POINTS and left.max() > least:
+    while len(chosen) < most and left.max() > least:
         pivot, k = int(left.argmax()), len(chosen)
         row = covariance(points[pivot : pivot + 1], points)[0] - factor[:k, pivot] @ factor[:k]
         factor[k] = row / np.sqrt(left[pivot])
         left = np.maximum(left - factor[k] ** 2, 0.0)
         left[pivot] = 0.0
         chosen.append(pivot)
-    found: Floats = points[np.sort(chosen)]
-    return found
+    return np.array(chosen, dtype=np.int64)
 
 
-def fit(
-    cross: Floats, among: Floats, lowers: Floats, target: Floats, variance: Floats, ridge: float
-) -> tuple[Floats, Floats]:
-    """Fit the weights of the points and the non-negative slopes.
+def root_of(among: Floats) -> Floats:
+    """Lower Cholesky factor of the prior covariance among the points, shape (m, m).
+
+    Raises
+    ------
+    numpy.linalg.LinAlgError
+        If a point repeats others; those of `basis` never do.
+    """
+    from scipy.linalg import cholesky
+
+    raised = among.copy()
+    raised[np.diag_indices_from(raised)] += _JITTER * among.diagonal().max()
+    root: Floats = cholesky(raised, lower=True, overwrite_a=True)
+    return root
+
+
+def features(root: Floats, cross: Floats) -> Floats:
+    """Edges as features in which the prior is a sum with independent weights of variance 1.
 
     Parameters
     ----------
+    root : ndarray, shape (m, m)
+        From `root_of`.
     cross : ndarray, shape (n, m)
-        Prior covariance between edges and points.
-    among : ndarray, shape (m, m)
-        Prior covariance among the points.
+        Prior covariance between edges and points; its memory is used for the result.
+
+    Returns
+    -------
+    ndarray, shape (n, m)
+    """
+    from scipy.linalg import solve_triangular
+
+    found: Floats = solve_triangular(root, cross.T, lower=True, overwrite_b=True).T
+    return found
+
+
+def fit(edges: Floats, lowers: Floats, target: Floats, variance: Floats, ridge: float) -> tuple[Floats, Floats]:
+    """Fit the weights of the features and the non-negative slopes.
+
+    Parameters
+    ----------
+    edges : ndarray, shape (n, m)
+        From `features`.
     lowers : ndarray, shape (n, n_lowers)
     target : ndarray, shape (n,)
         Micro pKa less the offset.
@@ -82,27 +145,37 @@ def fit(
 
     Returns
     -------
-    dual : ndarray, shape (m,)
+    weights : ndarray, shape (m,)
     slopes : ndarray, shape (n_lowers,)
+
+    Raises
+    ------
+    ValueError
+        If a variance is not positive.
     """
+    wrong = np.flatnonzero(~(variance > 0.0))
+    if len(wrong):
+        raise ValueError(f"variance of target {wrong[0]} is {variance[wrong[0]]:g}, not positive")
     from scipy.linalg import cho_factor, cho_solve
     from scipy.optimize import nnls
 
-    weighted = cross / variance[:, None]
-    system = among + weighted.T @ cross
-    system[np.diag_indices_from(system)] += _ROUNDING * among.diagonal().max()
-    solved = cho_factor(system, lower=True)
     both = np.column_stack([-lowers, target])
-    # The metric of the process by Woodbury's identity: D^-1 - D^-1 K_su (K_uu + K_us D^-1 K_su)^-1 K_us D^-1.
-    seen = weighted.T @ both
+    system, seen = np.eye(edges.shape[1]), np.zeros((edges.shape[1], both.shape[1]))
+    for start in range(0, len(edges), _ROWS_AT_ONCE):
+        rows = slice(start, start + _ROWS_AT_ONCE)
+        half = edges[rows] / np.sqrt(variance[rows])[:, None]
+        system += half.T @ half  # a matrix times itself: half the work of two
+        seen += half.T @ (both[rows] / np.sqrt(variance[rows])[:, None])
+    solved = cho_factor(system, lower=True, overwrite_a=True)
+    # The metric of the process by Woodbury's identity, with V the features: D^-1 - D^-1 V (1 + V' D^-1 V)^-1 V' D^-1.
     gram = both.T @ (both / variance[:, None]) - seen.T @ cho_solve(solved, seen)
     root = _square_root((gram + gram.T) / 2.0)
     slopes, _ = nnls(
         np.vstack([root[:, :-1], ridge * np.eye(lowers.shape[1])]),
         np.append(root[:, -1], np.zeros(lowers.shape[1])),
     )
-    dual: Floats = cho_solve(solved, weighted.T @ (target + lowers @ slopes))
-    return dual, slopes
+    weights: Floats = cho_solve(solved, seen[:, -1] - seen[:, :-1] @ slopes)
+    return weights, slopes
 
 
 def _square_root(gram: Floats) -> Floats:

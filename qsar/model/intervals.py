@@ -22,8 +22,18 @@ from numpy.typing import NDArray
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 
-#: Classes whose scores are kept apart: monobasic, first and later steps of polybasic acids, zwitterions.
-CLASSES = ("monobasic", "first of several", "later of several", "zwitterion")
+#: Classes whose scores are kept apart.
+CLASSES = (
+    "monobasic",
+    "first of two",
+    "second of two",
+    "zwitterion",
+    "first of three or more",
+    "later of three or more",
+)
+#: Acids with three or more COOH are few and much alike, so they take the scores of dibasic acids too; not the reverse,
+#: because the second step of a dibasic acid errs more than their later steps.
+_BORROWS = {4: (1, 4), 5: (2, 5)}
 EVIDENCE = (
     "constant",
     "nearest distance",
@@ -85,7 +95,7 @@ class Calibration:
         low, high = np.empty(len(scale)), np.empty(len(scale))
         for value in np.unique(label):
             rows = np.flatnonzero(label == value)
-            used = np.flatnonzero(self.label == value)
+            used = np.flatnonzero(np.isin(self.label, _BORROWS.get(int(value), (int(value),))))
             if len(used) < _LEAST_OF_CLASS:
                 used = np.arange(len(self.scores))
             centre = np.tile(by_member[:, rows].T[:, self.member[used]], 2)

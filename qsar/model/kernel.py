@@ -16,7 +16,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from qsar.model.inducing import MOST_EXACT, basis, fit
+from qsar.model.inducing import MOST_EXACT, basis, features, fit, root_of
 
 Floats = NDArray[np.float64]
 
@@ -187,7 +187,9 @@ def fit_trend(
     if points is None and len(free) > MOST_EXACT:
         points = basis_points(free, settings, scaling)
     if points is not None:
-        return _fit_over(points, scaling(free), lowers, target, variance, settings, scaling)
+        root = root_of(covariance(points, points, settings))
+        edges = features(root, covariance(scaling(free), points, settings))
+        return fit_over(points, root, edges, lowers, target, variance, settings, scaling)
     from scipy.linalg import cho_solve, cholesky, solve_triangular
     from scipy.optimize import nnls
 
@@ -201,8 +203,9 @@ def fit_trend(
     return KernelTrend(settings, scaling, points, dual, slopes, _OFFSET)
 
 
-def _fit_over(
+def fit_over(
     points: Floats,
+    root: Floats,
     edges: Floats,
     lowers: Floats,
     target: Floats,
@@ -210,6 +213,9 @@ def _fit_over(
     settings: KernelSettings,
     scaling: Scaling,
 ) -> KernelTrend:
-    cross, among = covariance(edges, points, settings), covariance(points, points, settings)
-    dual, slopes = fit(cross, among, lowers, target - _OFFSET, variance + settings.noise**2, _RIDGE)
+    """Fit a trend over `points` (m, n_free) with their `root` and the edges' features (n, m) from `inducing`."""
+    from scipy.linalg import solve_triangular
+
+    weights, slopes = fit(edges, lowers, target - _OFFSET, variance + settings.noise**2, _RIDGE)
+    dual = solve_triangular(root, weights, lower=True, trans="T")
     return KernelTrend(settings, scaling, points, dual, slopes, _OFFSET)

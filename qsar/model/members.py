@@ -14,8 +14,9 @@ from numpy.typing import NDArray
 
 from qsar.descriptors import LOWERS
 from qsar.model.boosting import BoostingSettings, Trees, fit_booster, trees_of
+from qsar.model.edges import Edges
 from qsar.model.inducing import MOST_EXACT
-from qsar.model.kernel import KernelSettings, KernelTrend, Scaling, basis_points, covariance, fit_trend
+from qsar.model.kernel import KernelSettings, KernelTrend, Scaling, basis_points, covariance
 from qsar.model.training_set import Targets, TrainingSet, latent_targets
 
 Floats = NDArray[np.float64]
@@ -111,7 +112,14 @@ class Member:
     booster: object
 
 
-def fit_member(data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], settings: Settings, seed: int) -> Member:
+def fit_member(
+    data: TrainingSet,
+    scaling: Scaling,
+    wanted: NDArray[np.bool_],
+    settings: Settings,
+    seed: int,
+    points: Floats | None = None,
+) -> Member:
     """Fit trend and booster on the wanted measurements.
 
     Parameters
@@ -122,45 +130,35 @@ def fit_member(data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], s
     settings : Settings
     seed : int
         For the booster and the inner folds.
+    points : ndarray, shape (n_points, n_free), optional
+        What `basis_points` finds, where it has been asked already; used for large tables only.
     """
     import scipy.linalg  # noqa: F401 - its threads are limited too, from the first fit on
     from threadpoolctl import threadpool_limits
 
     with threadpool_limits(1):  # sums in one order, so that the arrays do not depend on the number of threads
-        return _fit_member(data, scaling, wanted, settings, seed)
+        return _fit_member(data, scaling, wanted, settings, seed, points)
 
 
-def _converged_trend(
-    data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], settings: Settings
+def converged_trend(
+    data: TrainingSet, edges: Edges, wanted: NDArray[np.bool_], rounds: int
 ) -> tuple[KernelTrend, Targets]:
-    """Trend and latent micro constants after `settings.rounds` rounds of each other."""
-    free, lowers = data.x[:, ~LOWERS], data.x[:, LOWERS]
-    points = _few_points(data, scaling, settings)
+    """Trend and latent micro constants after `rounds` rounds of each other."""
     micro = np.full(len(data.x), START_NEUTRAL)
     targets = latent_targets(data, micro, wanted)
-    for _ in range(settings.rounds):
-        trend = fit_trend(
-            free[targets.edge],
-            lowers[targets.edge],
-            targets.value,
-            targets.variance,
-            settings.kernel,
-            scaling,
-            points,
-        )
-        micro = trend.predict(free, lowers)
+    for _ in range(rounds):
+        micro = edges.predict(edges.fit(targets.edge, targets.value, targets.variance))
         targets = latent_targets(data, micro, wanted)
-    trend = fit_trend(
-        free[targets.edge], lowers[targets.edge], targets.value, targets.variance, settings.kernel, scaling, points
-    )
-    return trend, targets
+    return edges.fit(targets.edge, targets.value, targets.variance), targets
 
 
-def _few_points(data: TrainingSet, scaling: Scaling, settings: Settings) -> Floats | None:
-    """The points of the trend where there are too many edges for an exact fit."""
+def edges_of(data: TrainingSet, scaling: Scaling, settings: Settings, points: Floats | None) -> Edges:
+    """The table's edges; its points are looked for where it has too many for an exact fit and they are not given."""
     if len(data.x) <= MOST_EXACT:
-        return None
-    return basis_points(data.x[:, ~LOWERS], settings.kernel, scaling)
+        return Edges(data.x, settings.kernel, scaling)
+    if points is None:
+        points = basis_points(data.x[:, ~LOWERS], settings.kernel, scaling)
+    return Edges(data.x, settings.kernel, scaling, points)
 
 
 def trend_without(data: TrainingSet, members: Members, wanted: NDArray[np.bool_]) -> Floats:
@@ -169,16 +167,21 @@ def trend_without(data: TrainingSet, members: Members, wanted: NDArray[np.bool_]
     from threadpoolctl import threadpool_limits
 
     with threadpool_limits(1):
-        trend, _ = _converged_trend(data, members.scaling, wanted, members.settings)
-    return trend.predict(data.x[:, ~LOWERS], data.x[:, LOWERS])
+        edges = edges_of(data, members.scaling, members.settings, members.points)
+        trend, _ = converged_trend(data, edges, wanted, members.settings.rounds)
+        return edges.predict(trend)
 
 
 def _fit_member(
-    data: TrainingSet, scaling: Scaling, wanted: NDArray[np.bool_], settings: Settings, seed: int
+    data: TrainingSet,
+    scaling: Scaling,
+    wanted: NDArray[np.bool_],
+    settings: Settings,
+    seed: int,
+    points: Floats | None,
 ) -> Member:
-    free, lowers = data.x[:, ~LOWERS], data.x[:, LOWERS]
-    trend, targets = _converged_trend(data, scaling, wanted, settings)
-    points = trend.points if len(data.x) > MOST_EXACT else None
+    edges = edges_of(data, scaling, settings, points)
+    trend, targets = converged_trend(data, edges, wanted, settings.rounds)
     residual = np.empty(len(targets.edge))
     rng = np.random.default_rng(seed)
     inner = rng.integers(settings.inner_folds, size=len(data.acids))[data.owner[targets.edge]]
@@ -187,13 +190,11 @@ def _fit_member(
         if not held.any() or not len(rest):
             residual[held] = 0.0
             continue
-        other = fit_trend(
-            free[rest], lowers[rest], targets.value[~held], targets.variance[~held], settings.kernel, scaling, points
-        )
-        residual[held] = targets.value[held] - other.predict(free[targets.edge[held]], lowers[targets.edge[held]])
+        other = edges.fit(rest, targets.value[~held], targets.variance[~held])
+        residual[held] = targets.value[held] - edges.predict(other, targets.edge[held])
     residual = np.clip(residual, -settings.largest_residual, settings.largest_residual)
     booster = fit_booster(data.x[targets.edge], residual, targets.share, LOWERS, settings.boosting, seed)
-    if points is not None:
+    if edges.points is not None:
         return Member(trend.dual, trend.slopes, trend.offset, booster)
     dual = np.zeros(len(data.x))
     np.add.at(dual, targets.edge, trend.dual)
@@ -227,23 +228,28 @@ def fit_members(
 
     fold = fold_of_acids(len(data.acids), settings)
     scaling = Scaling.of(data.x[:, ~LOWERS])
+    points = basis_points(data.x[:, ~LOWERS], settings.kernel, scaling)
     fitted = []
     tasks = (
-        delayed(fit_member)(data, scaling, fold[data.step_acid] != k, settings, settings.seed + 1000 * k)
+        delayed(fit_member)(data, scaling, fold[data.step_acid] != k, settings, settings.seed + 1000 * k, points)
         for k in range(settings.folds)
     )
     for member in Parallel(n_jobs=jobs, return_as="generator")(tasks):
         fitted.append(member)
         done(1)
-    return join_members(data, scaling, fitted, settings), fold
+    return join_members(data, scaling, fitted, settings, points), fold
 
 
-def join_members(data: TrainingSet, scaling: Scaling, fitted: Sequence[Member], settings: Settings) -> Members:
-    """Join fitted members, in the order of their folds, into arrays."""
+def join_members(
+    data: TrainingSet, scaling: Scaling, fitted: Sequence[Member], settings: Settings, points: Floats | None = None
+) -> Members:
+    """Join fitted members, in the order of their folds, into arrays; `points` as in `fit_member`."""
+    if points is None:
+        points = basis_points(data.x[:, ~LOWERS], settings.kernel, scaling)
     return Members(
         settings,
         scaling,
-        basis_points(data.x[:, ~LOWERS], settings.kernel, scaling),
+        points,
         np.array([m.dual for m in fitted]),
         np.array([m.slopes for m in fitted]),
         fitted[0].offset,

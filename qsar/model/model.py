@@ -6,13 +6,13 @@ import gc
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
 from qsar.advisories import advise
-from qsar.descriptors import SiteView, site_descriptors
+from qsar.descriptors import SiteView, rounded, site_descriptors
 from qsar.errors import UserError
 from qsar.ionisation import edge_views
 from qsar.isomers import configurations
@@ -33,8 +33,7 @@ _NEAR = 5
 _AT_ONCE = 128  # acids; the matrices between them and the measured steps then stay in the processor's cache
 
 
-@dataclass(frozen=True)
-class Neighbour:
+class Neighbour(NamedTuple):
     """A measured acid as evidence."""
 
     smiles: str
@@ -102,12 +101,12 @@ class _Case:
 
     acid: Acid
     views: list[SiteView]
-    x: Floats
+    x: list[list[float]]
 
 
 def _case(acid: Acid) -> _Case:
     views = edge_views(acid)
-    return _Case(acid, views, np.array([site_descriptors(view) for view in views], dtype=np.float64))
+    return _Case(acid, views, [site_descriptors(view) for view in views])
 
 
 @contextmanager
@@ -214,7 +213,7 @@ class Model:
         return Predictions(r for r in results if r is not None)
 
     def _predict_cases(self, cases: list[_Case], coverage: float) -> list[list[StepPrediction]]:
-        all_x = np.vstack([case.x for case in cases])
+        all_x = rounded([row for case in cases for row in case.x])
         trend, boosted = self.members.predict(all_x)
         rows = steps_of([len(case.acid.sites) for case in cases], trend + boosted)
         first = np.concatenate([[0], np.cumsum([len(case.x) for case in cases])])
@@ -241,7 +240,7 @@ class Model:
         low, high = self.calibration.interval(rows.by_member, scale, label, coverage)
         result: list[list[StepPrediction]] = [[] for _ in cases]
         for k, (c, step) in enumerate(zip(rows.case.tolist(), rows.step.tolist(), strict=True)):
-            found = tuple(self._neighbour(int(j), float(distances[k, j])) for j in near[k])
+            found = tuple(map(self._neighbour, near[k].tolist(), distances[k, near[k]].tolist()))
             best = found[0]
             verdict, reasons = self.domain.judge(
                 views[k], float(scale[k]), best.name or best.smiles or "an acid without a name", best.distance
@@ -281,7 +280,7 @@ class Model:
     def _finish(self, acid: Acid, steps: list[StepPrediction]) -> list[StepPrediction]:
         """Add what was measured of the acid itself, and what else a user should know about it."""
         known = self.library.rows_of(acid.smiles)
-        advice = advise(acid.mol, acid.graph.numbers)
+        advice = advise(acid.drawn, acid.graph)
         finished = []
         for s in steps:
             row = known.get(s.step)
@@ -343,7 +342,7 @@ def _join(isomers: list[list[StepPrediction]], note: str) -> list[StepPrediction
 def class_of(view: SiteView, n_sites: int, step: int) -> int:
     """Position in :data:`qsar.model.intervals.CLASSES` of a step."""
     if n_sites > 1:
-        return 1 if step == 1 else 2
+        return (1 if n_sites == 2 else 4) + (step > 1)
     return 3 if has_cation(view) else 0
 
 

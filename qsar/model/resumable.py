@@ -6,7 +6,7 @@ import hashlib
 import json
 import shutil
 import zipfile
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import replace
 from functools import partial
 from pathlib import Path
@@ -22,7 +22,7 @@ from qsar.model.boosting import Trees, trees_of
 from qsar.model.bundle import settings_to
 from qsar.model.kernel import Scaling, basis_points
 from qsar.model.members import Members, Settings, fit_member, fold_of_acids
-from qsar.model.training_set import Ints, TrainingSet
+from qsar.model.training_set import Floats, Ints, TrainingSet
 
 _TREES = ("feature", "threshold", "left", "right", "root", "baseline")
 _PLAIN = ("dual", "slopes", "offset", "depth")
@@ -73,6 +73,7 @@ def fit_members_resumably(
     note: Callable[[str], None] = lambda _: None,
     first_part: int | None = None,
     cluster: str | None = None,
+    jobs: int = 1,
 ) -> tuple[Members, Ints]:
     """Fit the ensemble as :func:`qsar.model.members.fit_members` does, member by member through a cache.
 
@@ -91,6 +92,8 @@ def fit_members_resumably(
         Acids, at the beginning, whose folds are dealt out apart; see `deal_folds`.
     cluster : str, optional
         Address of a Dask scheduler: the folds are fitted there.
+    jobs : int
+        Processes on this machine, where no cluster is named; the outcome does not depend on it.
 
     Returns
     -------
@@ -107,12 +110,19 @@ def fit_members_resumably(
     found = settings.folds - len(missing)
     for _ in range(found):
         done(1)
-    fit = partial(_fit, data, scaling, fold, settings)
-    fresh = map(fit, missing)
+    points = basis_points(data.x[:, ~LOWERS], settings.kernel, scaling)
+    fit = partial(_fit, data, scaling, fold, settings, points)
+    fresh: Iterable[Arrays]
     if cluster is not None:
         from qsar.cluster import in_order
 
-        fresh = in_order(cluster, fit, missing)  # type: ignore[assignment]
+        fresh = in_order(cluster, fit, missing)
+    elif jobs > 1 and len(missing) > 1:
+        from joblib import Parallel, delayed
+
+        fresh = Parallel(n_jobs=jobs, return_as="generator")(delayed(fit)(k) for k in missing)
+    else:
+        fresh = map(fit, missing)
     for k, arrays in zip(missing, fresh, strict=True):
         _write(paths[k], arrays, note)
         stored[k] = arrays
@@ -123,7 +133,7 @@ def fit_members_resumably(
     members = Members(
         settings,
         scaling,
-        basis_points(data.x[:, ~LOWERS], settings.kernel, scaling),
+        points,
         np.array([a["dual"] for a in fitted]),
         np.array([a["slopes"] for a in fitted]),
         float(fitted[0]["offset"]),
@@ -132,11 +142,11 @@ def fit_members_resumably(
     return members, fold
 
 
-def _fit(data: TrainingSet, scaling: Scaling, fold: Ints, settings: Settings, k: int) -> Arrays:
+def _fit(data: TrainingSet, scaling: Scaling, fold: Ints, settings: Settings, points: Floats, k: int) -> Arrays:
     """Member `k` as plain arrays."""
     import scipy.linalg  # noqa: F401 - loaded first, or the limit to one thread in `fit_member` does not reach it
 
-    member = fit_member(data, scaling, fold[data.step_acid] != k, settings, settings.seed + 1000 * k)
+    member = fit_member(data, scaling, fold[data.step_acid] != k, settings, settings.seed + 1000 * k, points)
     trees = trees_of([member.booster])
     arrays = {name: getattr(trees, name) for name in _TREES}
     arrays |= {"dual": member.dual, "slopes": member.slopes}

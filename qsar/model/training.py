@@ -196,10 +196,14 @@ def without_analogues(data: TrainingSet, members: Members, neighbours: Neighbour
     """
     place = coordinates(members, neighbours.weights, data.x[data.first[:-1]])
     group = np.full(len(place), -1)
+    length = np.einsum("ij,ij->i", place, place)
     for leader in np.random.default_rng(members.settings.seed).permutation(len(place)):
         if group[leader] < 0:
-            near = np.linalg.norm(place - place[leader], axis=1) < ANALOGUE_DISTANCE
-            group[near & (group < 0)] = leader
+            # The fast form of the distance picks out who may be near; the exact one, which takes longer, decides.
+            rough = length + length[leader] - 2.0 * (place @ place[leader])
+            maybe = np.flatnonzero((rough < 2.0 * ANALOGUE_DISTANCE**2) & (group < 0))
+            near = np.linalg.norm(place[maybe] - place[leader], axis=1) < ANALOGUE_DISTANCE
+            group[maybe[near]] = leader
     fold = np.empty(len(place), dtype=np.int64)
     load = np.zeros(STRANGER_FOLDS)
     leaders, sizes = np.unique(group, return_counts=True)

@@ -8,8 +8,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import replace
-from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from qsar.decisions.acids import steps_of_many
 from qsar.decisions.steps import AcidSteps, at_temperature
@@ -17,12 +16,15 @@ from qsar.decisions.worth_measuring import Verdict, choice_verdict, say_probabil
 from qsar.reading import Record
 from qsar.service.settings import Refused
 
+if TYPE_CHECKING:
+    from qsar.model.model import Model
+
 _MILLI = 1e-3
 _INFINITE = float("inf")
 
 
 def _acids(
-    folder: Path | None, asked: Sequence[tuple[str, str]], coverage: float, temperature_c: float
+    model: Model, asked: Sequence[tuple[str, str]], coverage: float, temperature_c: float
 ) -> list[AcidSteps]:
     """Steps of acids, given as name and SMILES, at a temperature.
 
@@ -33,7 +35,7 @@ def _acids(
     """
     records = [Record(name, smiles) for name, smiles in asked]
     found = []
-    for outcome in steps_of_many(records, coverage, model_folder=folder):
+    for outcome in steps_of_many(records, coverage, model=model):
         if outcome.acid is None:
             raise Refused(422, f"{outcome.record.id[:60]}: {outcome.error}")
         found.append(at_temperature(outcome.acid, temperature_c))
@@ -81,14 +83,14 @@ def _cautions(smiles: Iterable[str], more: Sequence[str] = ()) -> list[str]:
     return with_reference(list(dict.fromkeys([*lines, *more])))
 
 
-def base(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
+def base(model: Model, q: dict[str, Any]) -> dict[str, Any]:
     """Which base pulls an acid into the water, or leaves it in the organic layer."""
     from qsar.decisions.bases import BASES, CARBONIC_NOTE, WATER_NOTE
     from qsar.decisions.cautions import base_cautions
     from qsar.decisions.speciation import log_p_of
     from qsar.decisions.workup import Extraction, check_partitions, gentler_alternative, plan_workup
 
-    (acid,) = _acids(folder, [(q["name"] or "this acid", q["smiles"])], q["coverage"], q["temperature_c"])
+    (acid,) = _acids(model, [(q["name"] or "this acid", q["smiles"])], q["coverage"], q["temperature_c"])
     check_partitions(acid)
     log_p = log_p_of(acid, q["log_p"])
     assert log_p is not None  # there is a structure without charge
@@ -148,14 +150,14 @@ def base(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
     }
 
 
-def window(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
+def window(model: Model, q: dict[str, Any]) -> dict[str, Any]:
     """Which pH has one acid in the water and the other in the organic layer."""
     from qsar.decisions.speciation import log_p_of
     from qsar.decisions.window import Layered, find_window
     from qsar.decisions.workup import check_partitions
 
     asked = [(q["name"] or "this acid", q["smiles"]), (q["other_name"] or "the other acid", q["other_smiles"])]
-    acids = _acids(folder, asked, q["coverage"], q["temperature_c"])
+    acids = _acids(model, asked, q["coverage"], q["temperature_c"])
     pairs = []
     for acid, given in zip(acids, (q["log_p"], q["other_log_p"]), strict=True):
         check_partitions(acid)
@@ -197,11 +199,11 @@ def window(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
     }
 
 
-def buffer(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
+def buffer(model: Model, q: dict[str, Any]) -> dict[str, Any]:
     """How much acid and salt make a pH, and how sure that is."""
     from qsar.decisions.buffer import Recipe, make_buffer, salt_for
 
-    (acid,) = _acids(folder, [(q["name"] or "this acid", q["smiles"])], q["coverage"], q["temperature_c"])
+    (acid,) = _acids(model, [(q["name"] or "this acid", q["smiles"])], q["coverage"], q["temperature_c"])
     step = min(q["step"], len(acid.pka))
     half = 0.5 * q["total_m"]
     recipe = Recipe(half, half, step, 0.0, None, q["temperature_c"])
@@ -238,9 +240,9 @@ def buffer(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
     }
 
 
-def risk(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
+def risk(model: Model, q: dict[str, Any]) -> dict[str, Any]:
     """Whether a choice that holds on one side of a pKa is worth a measurement."""
-    (acid,) = _acids(folder, [(q["name"] or "this acid", q["smiles"])], q["coverage"], q["temperature_c"])
+    (acid,) = _acids(model, [(q["name"] or "this acid", q["smiles"])], q["coverage"], q["temperature_c"])
     step = min(q["step"], len(acid.pka)) - 1
     flip = q["flips_at"]
     below = acid.pka[step] < flip
@@ -263,12 +265,12 @@ def risk(folder: Path | None, q: dict[str, Any]) -> dict[str, Any]:
     }
 
 
-def answered(decision: Callable[[Path | None, dict[str, Any]], dict[str, Any]]) -> Callable[..., dict[str, Any]]:
+def answered(decision: Callable[[Model, dict[str, Any]], dict[str, Any]]) -> Callable[..., dict[str, Any]]:
     """The decision with whatever the calculation refuses as a refusal of the request."""
 
-    def asked(folder: Path | None, question: dict[str, Any]) -> dict[str, Any]:
+    def asked(model: Model, question: dict[str, Any]) -> dict[str, Any]:
         try:
-            return decision(folder, question)
+            return decision(model, question)
         except ValueError as problem:
             raise Refused(422, str(problem)) from problem
 

@@ -38,12 +38,14 @@ PARENTS: tuple[tuple[str, str], ...] = (
 """Acids to build from: name and SMILES."""
 
 
+_TOGETHER = 100  # structures predicted at once: bounds the memory of a list that is answered in one piece
+
+
 @dataclass
 class Desk:
     """What a worker process keeps from task to task."""
 
     model: Model
-    folder: Path | None = None
     names: dict[str, str] = field(default_factory=dict)
 
 
@@ -58,7 +60,7 @@ def open_desk(folder: Path | None) -> Desk:
         if name and smiles:
             names.setdefault(name.casefold(), smiles)
     _explained(Desk(model), "CC(=O)O", 0.9)  # what is computed once is computed now
-    return Desk(model, folder, names)
+    return Desk(model, names)
 
 
 def usable(smiles: str) -> Acid:
@@ -127,7 +129,7 @@ def predict(
     from qsar.batch import predict_records
 
     given = [Record(i, s, w, None, e) for i, s, w, e in records]
-    answers = predict_records(given, lambda: desk.model, coverage=coverage, chunk=max(len(given), 1))
+    answers = predict_records(given, lambda: desk.model, coverage=coverage, chunk=_TOGETHER)
     return [[row._asdict() for row in rows] for block in answers for _, rows in block]
 
 
@@ -257,7 +259,7 @@ def decide(desk: Desk, kind: str, question: dict[str, Any]) -> dict[str, Any]:
     """Answer to a decision: base, window, buffer, risk."""
     from qsar.service.decide import DECISIONS
 
-    return DECISIONS[kind](desk.folder, question)
+    return DECISIONS[kind](desk.model, question)
 
 
 TASKS: dict[str, Callable[..., Any]] = {

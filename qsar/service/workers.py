@@ -88,6 +88,7 @@ def _limit_memory(gib: float) -> None:
 class _Worker:
     process: BaseProcess
     pipe: Connection
+    starting: asyncio.Future[Any]
 
 
 @dataclass(order=True)
@@ -153,9 +154,9 @@ class Workers:
             args=(theirs, self.settings.tasks, self.settings.model, self.settings.memory_gib),
             daemon=True,
         )
-        worker = _Worker(process, ours)
+        worker = _Worker(process, ours, asyncio.ensure_future(self._in_thread(process.start)))
         self._all.add(worker)
-        await self._in_thread(process.start)
+        await asyncio.shield(worker.starting)
         theirs.close()
         kind, content = await self._receive(worker, _START_SECONDS)
         if kind == _READY and not self._closing:
@@ -199,6 +200,7 @@ class Workers:
 
         self._all.discard(worker)
         with contextlib.suppress(OSError, ValueError):
+            await asyncio.shield(worker.starting)  # one that is only about to start cannot be ended yet
             await self._in_thread(end)
 
     async def run(self, task: str, *, seconds: float, background: bool = False, **arguments: Any) -> Any:

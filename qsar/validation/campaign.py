@@ -8,7 +8,7 @@ test acids is measured.
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from pathlib import Path
 
 import numpy as np
@@ -21,6 +21,7 @@ from qsar.model.offset import fit_plain_trend
 from qsar.model.suggestion import Space, choose
 from qsar.model.training_set import TrainingSet, training_set
 from qsar.table import Measurement
+from qsar.validation.splits import subset
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -69,30 +70,6 @@ class Outcome:
             f"from {first} to {last} acids, {len(self.random)} seeds: error {self.random[:, 0].mean():.3f} at the "
             f"start, {ends}; difference {value:+.3f}, standard error {error:.3f}"
         )
-
-
-def subset(data: TrainingSet, acids: Sequence[int] | Ints) -> TrainingSet:
-    """Some acids of a training set, in the order given."""
-    acids = np.asarray(acids, dtype=np.int64)
-    sizes = np.diff(data.first)[acids]
-    edges = np.concatenate([np.arange(data.first[a], data.first[a + 1]) for a in acids])
-    place = np.full(len(data.acids), -1)
-    place[acids] = np.arange(len(acids))
-    steps = np.flatnonzero(place[data.step_acid] >= 0)
-    return replace(
-        data,
-        acids=[data.acids[a] for a in acids],
-        x=data.x[edges],
-        first=np.concatenate([[0], np.cumsum(sizes)]),
-        step_acid=place[data.step_acid[steps]],
-        step_number=data.step_number[steps],
-        pka=data.pka[steps],
-        uncertainty=data.uncertainty[steps],
-        weight=data.weight[steps],
-        name=[data.name[s] for s in steps],
-        family=[data.family[s] for s in steps],
-        source=[data.source[s] for s in steps],
-    )
 
 
 def simulate(

@@ -11,21 +11,27 @@ from numpy.typing import NDArray
 
 from qsar.descriptors import LOWERS
 from qsar.errors import UserError
-from qsar.model.kernel import Scaling, fit_trend
+from qsar.model.inducing import MOST_EXACT, POINTS, pivots
+from qsar.model.kernel import Scaling, basis_points, covariance
 from qsar.model.library import Library
-from qsar.model.members import START_NEUTRAL, Settings, fit_member, join_members
-from qsar.model.training_set import TrainingSet, latent_targets, training_set
+from qsar.model.members import Settings, converged_trend, edges_of, fit_member, join_members
+from qsar.model.training_set import TrainingSet, training_set
 from qsar.structures import read_acid
 from qsar.table import Measurement
 from qsar.validation.cache import Cache
-from qsar.validation.forest import count_fingerprints, fit_forest
-from qsar.validation.lines import line_predictions
+from qsar.validation.forest import Counts, count_fingerprints, fit_forest
+from qsar.validation.lines import Place, line_predictions, places
+from qsar.validation.pieces import in_pieces
+from qsar.validation.splits import subset
 
 Floats = NDArray[np.float64]
+Ints = NDArray[np.int64]
 Flags = NDArray[np.bool_]
 
 #: Learners by name: one member of the ensemble, its trend without the booster, and the baselines.
 LEARNERS = ("member", "trend", "forest", "lines", "mean")
+
+_PIVOTS = POINTS * 27 // 20  # so many that four fifths of the acids hold `POINTS` of them
 
 
 @dataclass(frozen=True, eq=False)
@@ -43,9 +49,36 @@ class Problem:
     settings: Settings
 
     @cached_property
-    def fingerprints(self) -> Floats:
+    def fingerprints(self) -> Counts:
         """Count fingerprints of the measured steps, shape (n_steps, n_columns)."""
         return count_fingerprints([self.data.acids[a] for a in self.data.step_acid], self.data.step_number)
+
+    @cached_property
+    def lines(self) -> list[Place]:
+        """Place of each measured step on its line."""
+        return places([self.data.acids[a] for a in self.data.step_acid], self.data.step_number)
+
+    @property
+    def is_large(self) -> bool:
+        """Whether fits are made over chosen points, see :mod:`qsar.model.inducing`."""
+        return len(self.data.x) > MOST_EXACT
+
+    @cached_property
+    def pivots(self) -> Ints:
+        """Edges of a large table that points are taken from, the most telling first."""
+        free = self.data.x[:, ~LOWERS]
+        kernel = self.settings.kernel
+        return pivots(Scaling.of(free)(free), lambda a, b: covariance(a, b, kernel), _PIVOTS)
+
+    def prepare(self, learners: Iterable[str]) -> None:
+        """Reckon here and once what the fits of these learners share, not again in every process."""
+        for learner in set(learners):
+            if learner == "forest":
+                self.fingerprints  # noqa: B018 - kept from now on
+            elif learner == "lines":
+                self.lines  # noqa: B018
+            elif learner in ("member", "trend") and self.is_large:
+                self.pivots  # noqa: B018
 
 
 @dataclass(frozen=True, eq=False)
@@ -107,41 +140,52 @@ def _predictions(problem: Problem, fit: Fit) -> Floats:
     data = problem.data if fit.pka is None else replace(problem.data, pka=fit.pka)
     train = fit.train
     if fit.learner == "member":
-        return data.steps(_member(data, train, problem.settings))
+        return data.steps(_member(problem, data, train))
     if fit.learner == "trend":
-        return data.steps(_trend(data, train, problem.settings))
+        return data.steps(_trend(problem, data, train))
     if fit.learner == "forest":
         forest = fit_forest(problem.fingerprints[train], data.pka[train], problem.settings.seed)
         return np.asarray(forest.predict(problem.fingerprints), dtype=float)
     if fit.learner == "lines":
-        return line_predictions([data.acids[a] for a in data.step_acid], data.step_number, data.pka, train)
+        return line_predictions(problem.lines, data.pka, train)
     if fit.learner == "mean":
         return np.full(len(data.pka), data.pka[train].mean())
     raise ValueError(f"no learner {fit.learner!r}; there are {', '.join(LEARNERS)}")
 
 
-def _scaling(data: TrainingSet, train: Flags) -> Scaling:
-    """Scaling of the descriptors of the acids that may be seen."""
-    seen = np.isin(data.owner, data.step_acid[train])
-    return Scaling.of(data.x[seen][:, ~LOWERS])
-
-
-def _member(data: TrainingSet, train: Flags, settings: Settings) -> Floats:
-    scaling = _scaling(data, train)
-    fitted = fit_member(data, scaling, train, settings, settings.seed)
-    trend, boosted = join_members(data, scaling, [fitted], settings).predict(data.x)
+def _member(problem: Problem, data: TrainingSet, train: Flags) -> Floats:
+    settings = problem.settings
+    part, wanted, scaling, points = _seen(problem, data, train)
+    fitted = fit_member(part, scaling, wanted, settings, settings.seed, points)
+    trend, boosted = join_members(part, scaling, [fitted], settings, points).predict(data.x)
     micro: Floats = trend[0] + boosted[0]
     return micro
 
 
-def _trend(data: TrainingSet, train: Flags, settings: Settings) -> Floats:
-    free, lowers, scaling = data.x[:, ~LOWERS], data.x[:, LOWERS], _scaling(data, train)
-    micro = np.full(len(data.x), START_NEUTRAL)
-    for _ in range(settings.rounds + 1):
-        t = latent_targets(data, micro, train)
-        trend = fit_trend(free[t.edge], lowers[t.edge], t.value, t.variance, settings.kernel, scaling)
-        micro = trend.predict(free, lowers)
-    return micro
+def _trend(problem: Problem, data: TrainingSet, train: Flags) -> Floats:
+    part, wanted, scaling, points = _seen(problem, data, train)
+    edges = edges_of(part, scaling, problem.settings, points)
+    trend, _ = converged_trend(part, edges, wanted, problem.settings.rounds)
+    return trend.predict(data.x[:, ~LOWERS], data.x[:, LOWERS])
+
+
+def _seen(problem: Problem, data: TrainingSet, train: Flags) -> tuple[TrainingSet, Flags, Scaling, Floats | None]:
+    """The table that a fit works on, its steps that may be used, scaling and points; none of them from other acids.
+
+    A small table is handed over whole, and the fit itself takes its part.
+    """
+    acids = np.unique(data.step_acid[train])
+    free = data.x[np.isin(data.owner, acids)][:, ~LOWERS]
+    scaling = Scaling.of(free)
+    if not problem.is_large:
+        return data, train, scaling, None
+    part, wanted = subset(data, acids), train[np.isin(data.step_acid, acids)]
+    if len(part.x) <= MOST_EXACT:
+        return part, wanted, scaling, None
+    own = problem.pivots[np.isin(data.owner[problem.pivots], acids)][:POINTS]
+    if len(own) < POINTS:  # a small part of the acids has points of its own
+        return part, wanted, scaling, basis_points(free, problem.settings.kernel, scaling)
+    return part, wanted, scaling, scaling(data.x[np.sort(own)][:, ~LOWERS])
 
 
 def run(
@@ -150,6 +194,7 @@ def run(
     cache: Cache | None = None,
     jobs: int = 1,
     done: Callable[[int], object] = lambda _: None,
+    cluster: str | None = None,
 ) -> dict[str, Floats]:
     """Make fits, those already in the cache excepted.
 
@@ -162,6 +207,8 @@ def run(
         Processes.
     done : callable
         Called with 1 after each fit.
+    cluster : str, optional
+        Address of a Dask scheduler: the fits are made there, and `jobs` does not matter.
 
     Returns
     -------
@@ -176,21 +223,10 @@ def run(
             found[fit.name] = stored
             done(1)
     left = [fit for fit in fits if fit.name not in found]
-    for fit, values in zip(left, _computed(problem, left, jobs), strict=True):
+    problem.prepare(fit.learner for fit in left)
+    for fit, values in zip(left, in_pieces(predictions, problem, left, jobs, cluster), strict=True):
         found[fit.name] = values
         if cache:
             cache.put(fit.name, values)
         done(1)
     return found
-
-
-def _computed(problem: Problem, fits: Sequence[Fit], jobs: int) -> Iterable[Floats]:
-    if jobs == 1 or len(fits) < 2:
-        return (predictions(problem, fit) for fit in fits)
-    from joblib import Parallel, delayed
-
-    if any(fit.learner == "forest" for fit in fits):
-        problem.fingerprints  # noqa: B018 - computed once here, not once in each process
-    parallel = Parallel(n_jobs=jobs, return_as="generator", inner_max_num_threads=1, backend="loky")
-    results: Iterable[Floats] = parallel(delayed(predictions)(problem, fit) for fit in fits)
-    return results

@@ -10,11 +10,12 @@ from numpy.typing import NDArray
 from qsar.structures import Acid
 
 Floats = NDArray[np.float64]
+Counts = NDArray[np.float32]
 Ints = NDArray[np.int64]
 _BITS = 2048
 
 
-def count_fingerprints(acids: Sequence[Acid], steps: Ints) -> Floats:
+def count_fingerprints(acids: Sequence[Acid], steps: Ints) -> Counts:
     """Folded Morgan counts of radius 2 (Rogers & Hahn, J. Chem. Inf. Model. 2010, 50, 742), step and COOH count.
 
     Parameters
@@ -25,21 +26,23 @@ def count_fingerprints(acids: Sequence[Acid], steps: Ints) -> Floats:
 
     Returns
     -------
-    ndarray, shape (n, 2050)
+    ndarray of float32, shape (n, 2050)
+        What forests work with; counts are exact in it.
     """
     from rdkit.Chem.rdFingerprintGenerator import GetMorganGenerator
 
     generator = GetMorganGenerator(radius=2, fpSize=_BITS)
-    seen: dict[str, Floats] = {}
-    for acid in acids:
-        if acid.smiles not in seen:
-            seen[acid.smiles] = generator.GetCountFingerprintAsNumPy(acid.mol).astype(float)
-    counts = np.array([seen[acid.smiles] for acid in acids]).reshape(len(acids), _BITS)
-    sites = np.array([len(acid.sites) for acid in acids], dtype=float)
-    return np.column_stack([counts, np.asarray(steps, dtype=float), sites])
+    table = np.empty((len(acids), _BITS + 2), dtype=np.float32)
+    seen: dict[str, int] = {}
+    for row, acid in enumerate(acids):
+        first = seen.setdefault(acid.smiles, row)
+        table[row, :_BITS] = table[first, :_BITS] if first < row else generator.GetCountFingerprintAsNumPy(acid.mol)
+    table[:, _BITS] = steps
+    table[:, _BITS + 1] = [len(acid.sites) for acid in acids]
+    return table
 
 
-def fit_forest(x: Floats, y: Floats, seed: int = 0, trees: int = 100):  # type: ignore[no-untyped-def]
+def fit_forest(x: Counts, y: Floats, seed: int = 0, trees: int = 100):  # type: ignore[no-untyped-def]
     """Fit a random forest (Breiman, Mach. Learn. 2001, 45, 5) to count fingerprints.
 
     Returns

@@ -148,14 +148,21 @@ def line_of(acid: Acid, step: int) -> tuple[str, float]:
     return f"{len(acid.sites)} COOH, step {step}{', cation' if charged else ''}", 0.0
 
 
-def line_predictions(acids: Sequence[Acid], steps: Ints, pka: Floats, train: Flags) -> Floats:
+Place = tuple[str, float]
+
+
+def places(acids: Sequence[Acid], steps: Ints) -> list[Place]:
+    """`line_of` each row: what does not depend on which rows are known."""
+    return [line_of(acid, int(step)) for acid, step in zip(acids, steps, strict=True)]
+
+
+def line_predictions(places: Sequence[Place], pka: Floats, train: Flags) -> Floats:
     """Fit each line to the rows in `train` and predict all rows.
 
     Parameters
     ----------
-    acids : sequence of Acid
-        One for each row.
-    steps : ndarray of int, shape (n,)
+    places : sequence of (str, float)
+        From `places`, one for each row.
     pka : ndarray, shape (n,)
     train : ndarray of bool, shape (n,)
 
@@ -164,7 +171,6 @@ def line_predictions(acids: Sequence[Acid], steps: Ints, pka: Floats, train: Fla
     ndarray, shape (n,)
         The mean of the training rows where a series has fewer than three of them.
     """
-    places = [line_of(acid, int(step)) for acid, step in zip(acids, steps, strict=True)]
     series, x = np.array([p[0] for p in places]), np.array([p[1] for p in places])
     result = np.full(len(pka), pka[train].mean())
     for name in np.unique(series):

@@ -117,11 +117,14 @@ def bootstrap(
     """
     rng = np.random.default_rng(seed)
     names, position = np.unique(groups, return_inverse=True)
-    members = [np.flatnonzero(position == k) for k in range(len(names))]
+    ordered = np.argsort(position, kind="stable")  # the rows group by group
+    size = np.bincount(position, minlength=len(names))
+    first = np.cumsum(size) - size
     values = np.empty(repeats)
     for r in range(repeats):
         drawn = rng.integers(len(names), size=len(names))
-        values[r] = statistic(np.concatenate([members[k] for k in drawn]))
+        end = np.cumsum(size[drawn])
+        values[r] = statistic(ordered[np.arange(end[-1]) + np.repeat(first[drawn] - end + size[drawn], size[drawn])])
     return np.sort(values[np.isfinite(values)])
 
 

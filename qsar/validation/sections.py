@@ -15,6 +15,7 @@ from qsar.validation.judged import FAMILIES, Judged
 from qsar.validation.leverage import leverage_of
 from qsar.validation.metrics import LEVELS, Errors, bootstrap, ratio_of_means
 from qsar.validation.report import Picture, Section, Table
+from qsar.validation.splits import MOST_FAMILIES, families
 from qsar.validation.studies import Scale
 
 Floats = NDArray[np.float64]
@@ -133,7 +134,7 @@ def cross_validation(data: TrainingSet, scale: Scale, results: Results) -> Secti
         "Repeated cross-validation and baselines",
         f"{scale.repeats} times {scale.folds} folds, drawn by acid so that the steps of one acid stay together; the "
         "baselines see the same folds. A member fitted to four fifths of the acids is judged here; the ensemble "
-        "that predicts new acids has seen more.",
+        f"that predicts new acids has seen more.{_capped(data, scale, results)}",
         (
             Table(
                 ("learner", "n", "mean absolute", "spread over repeats", "root mean square", "R²"),
@@ -142,6 +143,24 @@ def cross_validation(data: TrainingSet, scale: Scale, results: Results) -> Secti
         ),
         (Picture("baselines", figures.learners(bars, len(data.pka)), "Model and baselines in the same folds."),),
     )
+
+
+def _capped(data: TrainingSet, scale: Scale, results: Results) -> str:
+    """What a large table is spared, and why that costs no precision."""
+    if scale != studies.LARGE:
+        return ""
+    full = studies.FULL
+    error = np.abs(studies.cross_validated(data, scale, results, "member", 0) - data.pka)
+    return (
+        f" {scale.repeats} repeats here and {scale.draws} draws for the learning curve instead of {full.repeats} and "
+        f"{full.draws}: the mean over {len(error)} steps has a standard error of "
+        f"{error.std() / np.sqrt(len(error)):.4f} in a single repeat already."
+    )
+
+
+def _largest(data: TrainingSet) -> str:
+    everything = len(families(data, most=len(data.acids)))
+    return f" The {MOST_FAMILIES} largest of {everything} families." if everything > MOST_FAMILIES else ""
 
 
 def left_out(data: TrainingSet, scale: Scale, results: Results) -> list[Section]:
@@ -167,7 +186,8 @@ def left_out(data: TrainingSet, scale: Scale, results: Results) -> list[Section]
             Section(
                 f"Leave one {what if study == 'family' else 'substituent'} out",
                 f"All acids of a {what} left out at once ({learner}); mean absolute error over all {n} steps "
-                f"{mean:.3f}. “Ordinary folds” are the same steps in cross-validation.",
+                f"{mean:.3f}. “Ordinary folds” are the same steps in cross-validation."
+                + (_largest(data) if study == "family" else ""),
                 (Table((what, "acids", "n", "never seen", "ordinary folds", "forest, never seen"), rows),),
                 (Picture(f"without-{study}", figures.left_out(found, what), f"Error on a {what} never seen."),),
             )

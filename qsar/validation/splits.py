@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from collections import Counter
+from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -13,6 +15,8 @@ from qsar.model.training_set import TrainingSet
 Flags = NDArray[np.bool_]
 Ints = NDArray[np.int64]
 
+MOST_FAMILIES = 30  # left out one after the other; each costs two fits
+
 
 def folds_of_acids(data: TrainingSet, folds: int, seed: int) -> Ints:
     """Fold of each measured step, drawn by acid; shape (n_steps,)."""
@@ -22,14 +26,18 @@ def folds_of_acids(data: TrainingSet, folds: int, seed: int) -> Ints:
     return fold[data.step_acid]
 
 
-def families(data: TrainingSet, least: int = 5) -> dict[str, Flags]:
-    """Steps of the acids of each family with at least `least` acids; an acid counts in the family of its first row."""
+def families(data: TrainingSet, least: int = 5, most: int = MOST_FAMILIES) -> dict[str, Flags]:
+    """Steps of the acids of each family with at least `least` acids; an acid counts in the family of its first row.
+
+    Of more than `most` families the largest are taken.
+    """
     first: dict[int, str] = {}
     for acid, family in zip(data.step_acid, data.family, strict=True):
         first.setdefault(int(acid), family)
     sizes = Counter(first.values())
     own = np.array([first[int(a)] for a in data.step_acid])
-    return {name: own == name for name in sorted(sizes) if name and sizes[name] >= least}
+    large = [name for name, n in sorted(sizes.items(), key=lambda pair: (-pair[1], pair[0])) if name and n >= least]
+    return {name: own == name for name in sorted(large[:most])}
 
 
 def substituents(data: TrainingSet, least: int = 5, most: float = 0.15) -> dict[str, Flags]:
@@ -54,3 +62,27 @@ def subset_of_acids(data: TrainingSet, among: Flags, n: int, seed: int) -> Flags
     acids = np.unique(data.step_acid[among])
     drawn = np.random.default_rng(seed).permutation(acids)[:n]
     return among & np.isin(data.step_acid, drawn)
+
+
+def subset(data: TrainingSet, acids: Sequence[int] | Ints) -> TrainingSet:
+    """Some acids of a training set, in the order given."""
+    acids = np.asarray(acids, dtype=np.int64)
+    sizes = np.diff(data.first)[acids]
+    edges = np.concatenate([np.arange(data.first[a], data.first[a + 1]) for a in acids])
+    place = np.full(len(data.acids), -1)
+    place[acids] = np.arange(len(acids))
+    steps = np.flatnonzero(place[data.step_acid] >= 0)
+    return replace(
+        data,
+        acids=[data.acids[a] for a in acids],
+        x=data.x[edges],
+        first=np.concatenate([[0], np.cumsum(sizes)]),
+        step_acid=place[data.step_acid[steps]],
+        step_number=data.step_number[steps],
+        pka=data.pka[steps],
+        uncertainty=data.uncertainty[steps],
+        weight=data.weight[steps],
+        name=[data.name[s] for s in steps],
+        family=[data.family[s] for s in steps],
+        source=[data.source[s] for s in steps],
+    )

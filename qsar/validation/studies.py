@@ -7,11 +7,12 @@ is made on the same splits.
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
+from qsar.model.inducing import MOST_EXACT
 from qsar.model.training_set import TrainingSet
 from qsar.validation.fits import Fit, Problem
 from qsar.validation.metrics import Errors
@@ -55,6 +56,13 @@ class Scale:
 
 FULL = Scale()
 QUICK = Scale(1, 5, "trend", (0.25, 0.5, 1.0), 1, 3, 1)
+#: For large tables: there a mean over the steps hardly depends on how the folds fall.
+LARGE = replace(FULL, repeats=2, draws=2)
+
+
+def scale_of(data: TrainingSet) -> Scale:
+    """How much a full report does for a table."""
+    return FULL if len(data.x) <= MOST_EXACT else LARGE
 
 
 def cross_validation_fits(data: TrainingSet, scale: Scale) -> list[Fit]:

@@ -173,7 +173,7 @@ def _shown(model: Model, acid: Acid, steps: Sequence[int]) -> set[tuple[str, ...
     """What an acid showed the domain: the features at the dominant edges of its measured steps."""
     n = len(acid.sites)
     network = cube(n)
-    micro = model.micro(edge_descriptors(acid)).mean(axis=0)
+    micro = model.micro(edge_descriptors(acid)).mean(axis=0) if n > 1 else np.zeros(1)
     molecule = Molecule(acid.graph)
     shown: set[tuple[str, ...]] = set()
     for step in steps:

@@ -177,5 +177,6 @@ def test_what_cannot_be_read_or_written_is_said_in_one_line(
     assert main(["explain", str(tmp_path / "none.csv"), "--output", str(tmp_path / "out")]) == 2
     assert main(["explain", "CC(=O)O", "--report-file", str(tmp_path / "report.docx")]) == 2
     lines = capsys.readouterr().err.strip().splitlines()
+    assert "it is a file; give the name of a folder" in lines[0]
     assert all(line.startswith("acidity: ") for line in lines)
     assert load_model(shipped_model).name

@@ -38,13 +38,19 @@ LIMIT = len(SKELETONS) * len(GROUPS) ** 3
 _STRIDE = 7_368_787  # a prime that divides no limit here: neighbours in the list have little in common
 
 
-def acid(number: int) -> str:
-    """SMILES of one acid, for numbers from 0 to ``LIMIT - 1``."""
+def parts(number: int) -> tuple[int, tuple[str, str, str]]:
+    """Number of the skeleton of one acid, and its groups; for numbers from 0 to ``LIMIT - 1``."""
     place = number * _STRIDE % LIMIT
     place, skeleton = divmod(place, len(SKELETONS))
     place, first = divmod(place, len(GROUPS))
     third, second = divmod(place, len(GROUPS))
-    return SKELETONS[skeleton].format(GROUPS[first], GROUPS[second], GROUPS[third])
+    return skeleton, (GROUPS[first], GROUPS[second], GROUPS[third])
+
+
+def acid(number: int) -> str:
+    """SMILES of one acid, for numbers from 0 to ``LIMIT - 1``."""
+    skeleton, groups = parts(number)
+    return SKELETONS[skeleton].format(*groups)
 
 
 def acids(count: int, start: int = 0) -> Iterator[str]:

@@ -144,3 +144,11 @@ def test_other_protons_are_seen_where_they_are(label: str, with_it: str, without
     pattern = Chem.MolFromSmarts({name: smarts for name, smarts, _, _ in OTHER_PROTONS}[label])
     assert read_acid(with_it).mol.HasSubstructMatch(pattern)
     assert not read_acid(without).mol.HasSubstructMatch(pattern)
+
+
+def test_a_question_shows_the_value_before_its_correction_too() -> None:
+    """The user typed 8.27, a mixed constant; what is compared is 8.38 at ionic strength 0 (Davies 1962)."""
+    flag = flag_of("CC(=O)O", "8.27", ionic_strength_m="0.1", constant="mixed")
+    assert flag is not None and "(8.27 before its correction)" in flag.sentence
+    uncorrected = flag_of("CC(=O)O", "8.27")
+    assert uncorrected is not None and "before its correction" not in uncorrected.sentence

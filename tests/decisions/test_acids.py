@@ -80,7 +80,7 @@ def test_measured_value_goes_before_the_prediction(model: list[Path | None]) -> 
     acid = steps_of("CC(=O)O", 0.9)
     assert acid.origin == "measured" and acid.pka == (4.76,)
     assert acid.sd == pytest.approx([0.02])
-    assert "measured 4.76 from the reference table is used" in acid.notes[0]
+    assert "measured 4.76 from the model's training table" in acid.notes[0]
 
 
 def test_known_constants_need_no_model(model: list[Path | None]) -> None:

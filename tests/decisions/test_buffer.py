@@ -109,7 +109,7 @@ def test_amino_acid_with_its_hydrochloride() -> None:
 def test_refusals() -> None:
     with pytest.raises(ValueError, match="not both zero"):
         make_buffer(ACETIC, Recipe(0.0, 0.0))
-    with pytest.raises(ValueError, match="step 2 is not among its 1"):
+    with pytest.raises(ValueError, match="no step 2; it has 1 step"):
         make_buffer(ACETIC, Recipe(0.1, 0.1, step=2))
     with pytest.raises(ValueError, match="own ions make"):
         make_buffer(ACETIC, Recipe(0.1, 0.1, ionic_strength_m=0.05))

@@ -153,12 +153,15 @@ def test_workup_says_when_the_error_of_an_estimated_log_p_decides(capsys: pytest
     ("arguments", "status", "message"),
     [
         (["ionise"], 2, "give a SMILES string, a file, or --pka"),
-        (["ionise", "--pka", "4.2", "--temperature", "60"], 2, "10 to 40 degC"),
+        (["ionise", "--pka", "4.2", "--temperature", "60"], 2, "10 to 40 °C"),
         (["ionise", "--pka", "4.2", "--ionic-strength", "0.9"], 2, "0 to 0.5 mol/L"),
         (["ionise", "--pka", "4.2", "--ph-step", "1e-5"], 2, "points"),
         (["ionise", "--pka", "4.2", "-o", "x.doc"], 2, "the extension must be"),
-        (["ionise", "CC(=O)O", "--pka", "4.2", "--pka", "5"], 2, "2 times for 1 acids"),
+        (["ionise", "CC(=O)O", "--pka", "4.2", "--pka", "5"], 2, "2 times for 1 acid;"),
         (["ionise", "missing.csv", "--pka", "4.2"], 2, "no such file"),
+        (["ionise", "--pka", "4.2", "--from-ph", "9", "--to-ph", "2"], 2, "must lie above --from-ph"),
+        (["ionise", "--pka", "4.2", "--temperature", "-5"], 2, "-5 °C"),
+        (["buffer", "--pka", "4.2", "--step", "2"], 3, "it has 1 step"),
         (["workup", "--pka", "4.2", "--log-p", "2", "--base", "lye"], 2, "is not known"),
         (["workup", "--pka", "4.2", "--log-p", "2", "--base", "amine:99"], 2, "from 0 to 14"),
         (["workup", "--pka", "4.2", "--log-p", "2", "--ionic-strength", "3"], 2, "0 to 0.5 mol/L"),
@@ -178,3 +181,40 @@ def test_refusals(
     err = capsys.readouterr().err
     assert message in err and "Traceback" not in err
     assert len(err.strip().splitlines()) == 1
+
+
+@pytest.mark.parametrize(
+    ("arguments", "message"),
+    [
+        (["ionise", "--pka", "4,76"], "with a point"),  # a decimal comma, not steps of 4 and 76
+        (["ionise", "--pka", "4,3"], "with a point"),
+        (["ionise", "--pka", "400"], "from -5 to 20"),
+        (["ionise", "--pka", "4.2", "--at-ph", "99"], "a pH from"),
+        (["ionise", "--pka", "4.2", "--log-p", "1e9"], "too large"),
+        (["buffer", "--pka", "4.2", "--acid", "100"], "more than 20 mol/L"),
+        (["buffer", "--pka", "4.2", "--ph", "20"], "a pH from"),
+    ],
+)
+def test_numbers_that_no_solution_has(
+    arguments: list[str], message: str, capsys: pytest.CaptureFixture[str]
+) -> None:
+    with pytest.raises(SystemExit) as left:
+        main(arguments)
+    assert left.value.code == 2
+    err = capsys.readouterr().err
+    assert message in err and len(err.strip().splitlines()) == 1
+
+
+def test_a_recipe_that_is_no_buffer_says_so(capsys: pytest.CaptureFixture[str]) -> None:
+    """An excess of strong base sets the pH by itself: the solution is no buffer (common practice, no source)."""
+    arguments = ["buffer", "--pka", "4.756", "--acid", "0.05", "--salt", "0.05"]
+    assert main(arguments) == 0
+    assert "outside the useful range" not in capsys.readouterr().out
+    assert main([*arguments, "--strong-base", "0.2"]) == 0
+    assert "outside the useful range" in " ".join(capsys.readouterr().out.split())
+
+
+def test_the_columns_of_the_base_table_are_explained(capsys: pytest.CaptureFixture[str]) -> None:
+    assert main(["workup", "--pka", "4.2", "--log-p", "1.9", "--base", "ammonia"]) == 0
+    out = " ".join(capsys.readouterr().out.split())
+    assert "ΔpKa: constant of the base's conjugate acid less that of the acid" in out

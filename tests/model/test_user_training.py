@@ -203,12 +203,15 @@ def test_withheld_structures_are_nowhere_in_the_bundle(
         (["--seed", "-1"], "--seed"),
         (["--name", "../x"], "no name"),
         (["--data", "nowhere.csv"], "nowhere.csv"),
+        (["--name", "carboxylic-1"], "choose another --name"),
+        (["--output", __file__], "it is a file"),
     ],
 )
 def test_wrong_usage_is_one_line(argv: list[str], words: str, capsys: pytest.CaptureFixture[str]) -> None:
     assert cli.main(["train", *argv]) == 2
     err = capsys.readouterr().err
     assert words in err and err.count("\n") == 1
+    assert "models delete carboxylic-1" not in err  # a shipped model cannot be deleted
 
 
 def test_too_few_acids_alone_are_refused(

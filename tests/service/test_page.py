@@ -10,7 +10,7 @@ from typing import Any
 
 import pytest
 
-WAYS = [(1280, "light"), (390, "dark")]
+WAYS = [(width, scheme) for width in (1280, 390) for scheme in ("light", "dark")]
 STATES = {
     "start": "",
     "one acid": "#/acid?s=OC(%3DO)c1ccccc1O",

@@ -45,7 +45,7 @@ SHORT = {
     "halogenoalkanoic": (36, "others are remembered at 18 or 35 °C or without a sure source"),
     "keto_aldehydo": (11, "the simple ones are remembered at 18 °C; others hydrate, enolise or decompose"),
     "benzoic_meta_para": (43, "others are remembered in 50 % ethanol only or without a sure source"),
-    "benzoic_ortho": (34, "others are remembered in 50 % ethanol only; some acids are lactols"),
+    "benzoic_ortho": (33, "others are remembered in 50 % ethanol only; some acids are lactols"),
 }
 
 

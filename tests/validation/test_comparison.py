@@ -175,11 +175,14 @@ def test_the_command(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None
     data = ["--data", str(table)]
     assert cli.main([*both, *data, "--output", str(tmp_path / "pairs.csv")]) == 0
     out, err = capsys.readouterr()
+    assert "0.0% of random swaps" not in out and "of random swaps" in out
     assert "by family" in out and "by verdict" in out and "inside the 90% interval" in out
     assert "left out" in err
     with (tmp_path / "pairs.csv").open(encoding="utf-8", newline="") as handle:
         written = list(csv.DictReader(handle))
     assert f"over {len(written)} steps" in out.splitlines()[0]
+    assert cli.main([*both, *data, "--output", str(tmp_path / "nowhere" / "pairs.csv")]) == 2
+    assert capsys.readouterr().err.count("\n") == 1  # said before anything is computed
     assert cli.main([*both, *data, "--by-date", "2022-12-31"]) == 0
     assert "after 2022-12-31" in capsys.readouterr().err
     assert cli.main([*both, *data, "--by-date"]) == 2

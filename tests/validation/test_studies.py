@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
+from dataclasses import fields, replace
 from functools import cache
 from pathlib import Path
 
@@ -11,14 +11,17 @@ import pytest
 from rdkit.Chem.rdFingerprintGenerator import GetMorganGenerator
 from small_models import QUICK, small_model
 
+from qsar.descriptors import LOWERS
 from qsar.errors import UserError
+from qsar.model import inducing, members
 from qsar.structures import read_acid
 from qsar.validation import fits, splits, studies
 from qsar.validation.cache import Cache
 from qsar.validation.fits import Fit, Problem, problem_of, run
 from qsar.validation.forest import count_fingerprints
-from qsar.validation.judged import AMINO, FIRST, HIGHER, MONOBASIC, SECOND, family_of, judge, library_steps
-from qsar.validation.lines import line_predictions
+from qsar.validation.judged import AMINO, FIRST, HIGHER, MONOBASIC, SECOND, Judged, family_of, judge, library_steps
+from qsar.validation.judging import PARTS, judge_table
+from qsar.validation.lines import line_predictions, places
 from qsar.validation.open_rows import as_text
 
 SMALL = studies.Scale(1, 3, "trend", (0.5, 1.0), 1, 2, 1)
@@ -83,7 +86,7 @@ def test_plain_lines_are_numpys() -> None:
     pka = np.array([4.76, 2.87, 1.30, 4.87])
     train = np.array([True, True, True, False])
     slope, offset = np.polyfit([0.0, 1.05, 1.94], pka[:3], 1)
-    found = line_predictions(acids, np.ones(4, dtype=int), pka, train)
+    found = line_predictions(places(acids, np.ones(4, dtype=int)), pka, train)
     assert found[3] == pytest.approx(offset - 0.10 * slope, abs=1e-12)
 
 
@@ -135,6 +138,79 @@ def test_processes_do_not_change_the_numbers() -> None:
     assert all(np.array_equal(one[name], two[name]) for name in one)
 
 
+@pytest.fixture
+def large(monkeypatch: pytest.MonkeyPatch) -> Problem:
+    """The small table, taken for a large one: 150 edges are as many as an exact fit may have."""
+    for module in (fits, members, inducing, studies):
+        monkeypatch.setattr(module, "MOST_EXACT", 150)
+    for module in (fits, inducing):
+        monkeypatch.setattr(module, "POINTS", 140)
+    monkeypatch.setattr(fits, "_PIVOTS", 189)
+    return Problem(problem().data, QUICK)
+
+
+def test_fits_of_a_large_table_see_nothing_of_the_acids_left_out(large: Problem) -> None:
+    """Neither values nor descriptors of other acids change the prediction of one that is left out."""
+    data = large.data
+    train = splits.folds_of_acids(data, 5, 1) != 0
+    held = np.isin(data.owner, data.step_acid[~train])
+    assert large.is_large
+    assert np.sum(~held) > 150  # not an exact fit
+    for learner in ("trend", "member"):
+        found = fits.predictions(large, Fit("x", learner, train))
+        moved = Problem(replace(data, pka=np.where(train, data.pka, 9.0)), QUICK)
+        assert np.array_equal(found, fits.predictions(moved, Fit("x", learner, train))), learner
+    part, wanted, scaling, points = fits._seen(large, data, train)
+    assert wanted.all()
+    assert len(part.pka) == train.sum()
+    own = {row.tobytes() for row in scaling(part.x[:, ~LOWERS])}
+    assert points is not None
+    assert len(points) == 140
+    assert all(p.tobytes() in own for p in np.ascontiguousarray(points))
+
+
+def test_with_all_points_the_fits_of_a_large_table_are_the_exact_ones(
+    large: Problem, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """The trend to 1e-5; of the member only the trend, since its booster draws inner folds of the acids it has."""
+    data = large.data
+    for name in ("POINTS", "_PIVOTS"):
+        monkeypatch.setattr(fits, name, len(data.x))
+    monkeypatch.setattr(inducing, "POINTS", len(data.x))
+    train = splits.folds_of_acids(data, 5, 1) != 0
+    over = {learner: fits.predictions(large, Fit("x", learner, train)) for learner in ("trend", "member")}
+    assert studies.scale_of(data) is studies.LARGE
+    monkeypatch.undo()
+    assert studies.scale_of(data) is studies.FULL
+    exact = {learner: fits.predictions(problem(), Fit("x", learner, train)) for learner in over}
+    assert over["trend"] == pytest.approx(exact["trend"], abs=1e-5)
+    error = {name: np.abs(found["member"] - data.pka)[~train].mean() for name, found in (("o", over), ("e", exact))}
+    assert error["o"] == pytest.approx(error["e"], abs=0.02)
+
+
+def test_parts_of_a_large_table_are_exact_or_have_points_of_their_own(large: Problem) -> None:
+    data = large.data
+    everything = np.ones(len(data.pka), dtype=bool)
+    few, more = (splits.subset_of_acids(data, everything, n, 3) for n in (30, 100))
+    part, _, _, points = fits._seen(large, data, few)
+    assert len(part.x) <= 150
+    assert points is None
+    part, _, scaling, points = fits._seen(large, data, more)
+    assert len(part.x) > 150
+    assert points is not None
+    assert 100 < len(points) <= 140  # fewer where what is left repeats other edges
+    assert {p.tobytes() for p in np.ascontiguousarray(points)} <= {p.tobytes() for p in scaling(part.x[:, ~LOWERS])}
+
+
+def test_of_many_families_the_largest_are_left_out() -> None:
+    data = problem().data
+    everything, three = splits.families(data), splits.families(data, most=3)
+    assert list(three) == sorted(three)
+    assert max(everything[n].sum() for n in set(everything) - set(three)) <= max(own.sum() for own in three.values())
+    sizes = {n: len(np.unique(data.step_acid[own])) for n, own in everything.items()}
+    assert min(sizes[n] for n in three) >= max(sizes[n] for n in set(everything) - set(three))
+
+
 @pytest.mark.slow
 def test_studies_on_a_small_table() -> None:
     data = problem().data
@@ -178,6 +254,16 @@ def test_permuting_keeps_the_values() -> None:
 )
 def test_family(smiles: str, step: int, family: str) -> None:
     assert family_of(read_acid(smiles), step) == family
+
+
+def test_the_table_judged_in_processes_is_the_same() -> None:
+    model = small_model()
+    done: list[int] = []
+    one, two = judge_table(model), judge_table(model, done.append, jobs=2)
+    assert sum(done) == PARTS
+    for field in fields(Judged):
+        a, b = getattr(one, field.name), getattr(two, field.name)
+        assert a == b if isinstance(a, list) else np.array_equal(a, b), field.name
 
 
 def test_the_table_judged_by_itself() -> None:

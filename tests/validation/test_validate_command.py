@@ -89,6 +89,16 @@ def test_a_folder_without_data_is_one_line(bundle: Path, tmp_path: Path, capsys:
     assert "--open-data" in capsys.readouterr().err
 
 
+def test_a_place_that_cannot_be_written_is_said_before_the_work(
+    bundle: Path, tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    (tmp_path / "file").write_text("x", encoding="utf-8")
+    assert main(["validate", "--model", str(bundle), "--output", str(tmp_path / "file")]) == 2
+    assert capsys.readouterr().err.strip().endswith("it is a file; give the name of a folder")
+    assert main(["validate", "--model", str(bundle), "--output", str(tmp_path), "--name", "a/b"]) == 2
+    assert "without a folder" in capsys.readouterr().err
+
+
 def test_training_on_open_rows_too(bundle: Path, invented: Path, tmp_path: Path) -> None:
     """The path of a user who may use that dataset; every acid is still judged without it."""
     model = small_model()
