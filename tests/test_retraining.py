@@ -176,8 +176,10 @@ def test_headers_can_be_named_and_what_is_missing_is_said(
     assert "no column Value" in capsys.readouterr().err
     assert cli.main(["curate", "nowhere.csv"]) == 2
     Path("wide.csv").write_text("smiles,pKa1,pKa2\nOC(=O)CC(=O)O,2.85,5.70\n", encoding="utf-8")
-    assert cli.main(["curate", "wide.csv"]) == 2
-    assert "a row of its own" in capsys.readouterr().err
+    assert cli.main(["curate", "wide.csv", "--no-examination", "--temperature", "25", "--ionic-strength", "0"]) == 0
+    steps = [(r["step"], float(r["pka"])) for r in rows_of(Path("wide_clean.csv"))]
+    assert [step for step, _ in steps] == ["1", "2"]
+    assert steps[0][1] < steps[1][1]
 
 
 def test_the_iupac_header_is_known(

@@ -29,6 +29,7 @@ class Step:
     reasons: tuple[str, ...] = ()
     measured: float | None = None
     measured_uncertainty: float | None = None
+    measured_source: str = ""
     pka_without: float | None = None
 
 
