@@ -120,8 +120,9 @@ class _Perception:
             others = [
                 (b, o) for b, o in zip(g.neighbours[partner], g.orders[partner], strict=True) if b != a and o == 2.0
             ]
-            if others and g.numbers[others[0][0]] in (8, 16):
-                self.add("isothiocyanato", a, partner, others[0][0])
+            far = others[0][0] if others else -1
+            if others and g.numbers[far] in (8, 16):
+                self.add("isocyanato" if g.numbers[far] == 8 else "isothiocyanato", a, partner, far)
             elif self.bonded(a, 8):
                 self.add("oximino", partner, a, *self.bonded(a, 8))
             elif self.bonded(a, 7, 1.0):

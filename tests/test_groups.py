@@ -46,6 +46,7 @@ def kinds(smiles: str) -> Counter[str]:
         ("OC(=O)CSSC", {"disulfide": 1}),
         ("OC(=O)CSC#N", {"thiocyanato": 1}),
         ("OC(=O)CN=C=S", {"isothiocyanato": 1}),
+        ("OC(=O)CN=C=O", {"isocyanato": 1}),
         ("OC(=O)CS(C)=O", {"sulfinyl": 1}),
         ("OC(=O)CS(C)(=O)=O", {"sulfonyl": 1}),
         ("OC(=O)CS(N)(=O)=O", {"sulfonamide": 1}),

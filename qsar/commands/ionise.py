@@ -34,6 +34,7 @@ COLUMNS = (
     "log_p_source", "coverage", "ionic_strength_m", "temperature_c",
 )  # fmt: skip
 _MOST_POINTS = 5000
+_ION_PAIRS = 4.0  # units of log P by which the ion pair of a carboxylate lies lower (common practice: 3 to 4)
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
@@ -156,7 +157,7 @@ def _show(result: Speciation, args: argparse.Namespace) -> None:
     if result.log_d is not None and result.log_p is not None:
         show(
             f"{result.log_p.label}: {result.log_p.value:.2f}. Its error is not in the bands; ion pairs are "
-            "left out."
+            "left out, and with salt about they keep log D from falling much further than 4 units."
         )
     elif acid.charge_of_acid_form != 0:
         show(
@@ -183,8 +184,9 @@ def _show_table(result: Speciation, args: argparse.Namespace) -> None:
             for k in range(acid.charges.size)
         ]
         line = [f"{result.ph[i]:.2f}", *cells, f"{round(float(result.charge.value[i]), 2) + 0.0:+.2f}"]
-        if result.log_d is not None:
-            line.append(f"{result.log_d.value[i]:.2f}")
+        if result.log_d is not None and result.log_p is not None:
+            value, floor = float(result.log_d.value[i]), result.log_p.value - _ION_PAIRS
+            line.append(f"{value:.2f}" if value > floor else f"below {floor:.1f}")
         table.append(line)
     show_table(heading, table)
 

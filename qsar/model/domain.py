@@ -134,7 +134,7 @@ class Domain:
             n = self.counts.get(feature, 0)
             if feature[0] == "group" and n == 0:
                 level = max(level, 2)
-                reasons.append(f"no measured acid has a {label(feature[1])} group – {away}")
+                reasons.append(f"no measured acid has {_with_article(label(feature[1]))} group – {away}")
             elif feature[0] == "site" and n == 0:
                 level = max(level, 2)
                 reasons.append(f"no measured acid has its COOH on {feature[1]} – {away}")
@@ -143,7 +143,9 @@ class Domain:
                 reasons.append(f"only {_number(n)} a COOH on {feature[1]}")
             elif feature[0] == "place" and n == 0 and self.counts.get(("group", feature[1]), 0):
                 level = max(level, 1)
-                reasons.append(f"no measured acid has a {label(feature[1])} group {place(feature)} – {away}")
+                reasons.append(
+                    f"no measured acid has {_with_article(label(feature[1]))} group {place(feature)} – {away}"
+                )
         for doubt, sentence in basic_nitrogen(view):
             level = max(level, doubt)
             reasons.append(sentence)
@@ -209,6 +211,10 @@ def label(kind: str) -> str:
     from qsar.constants.functional_groups import functional_groups
 
     return functional_groups()[kind].label
+
+
+def _with_article(word: str) -> str:
+    return f"{'an' if word[0] in 'aeiou' else 'a'} {word}"
 
 
 def place(feature: tuple[str, ...]) -> str:
