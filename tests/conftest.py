@@ -27,6 +27,7 @@ def pytest_addoption(parser: pytest.Parser) -> None:
     parser.addoption(
         "--structures", type=int, default=15_000, metavar="N", help="structures of the speed measurement (15000)"
     )
+    parser.addoption("--requests", type=int, default=100_000, metavar="N", help="requests of the long day (100000)")
     parser.addoption("--plots", metavar="DIR", help="where measurements leave their plots (default: reports/)")
 
 
