@@ -75,8 +75,9 @@ def check_ionic_strength(ionic_strength_m: ArrayLike) -> Floats:
     """
     strength = np.asarray(ionic_strength_m, dtype=float)
     if not np.all((strength >= 0.0) & (strength <= DAVIES_LIMIT_M)):
+        stated = ", ".join(f"{value:g}" for value in np.ravel(strength))
         raise ValueError(
-            f"ionic strength {np.array2string(strength)} mol/L: the Davies equation is used "
+            f"ionic strength {stated} mol/L: the Davies equation is used "
             f"from 0 to {DAVIES_LIMIT_M:g} mol/L only"
         )
     return strength

@@ -7,6 +7,7 @@ measured, and by the attribution as players.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from qsar.graph import Graph
@@ -58,6 +59,7 @@ class _Perception:
         ]
 
     def run(self) -> list[Group]:
+        """All groups; what is claimed first (nitro, carboxyl) is not looked at again by what comes later."""
         g = self.g
         elements = set(g.numbers)
         if 7 in elements:
@@ -324,6 +326,11 @@ def _has_oxide(g: Graph, a: int) -> bool:
 
 def _one_three(g: Graph, nitrogens: list[int]) -> bool:
     return nitrogens[1] not in g.neighbours[nitrogens[0]]
+
+
+def owners(groups: Sequence[Group]) -> dict[int, Group]:
+    """The group that each atom belongs to; the first, where two share an atom."""
+    return {a: group for group in reversed(groups) for a in group.atoms}
 
 
 def perceive(graph: Graph) -> list[Group]:

@@ -13,7 +13,7 @@ import pytest
 from qsar.basicity import amine_pka, anilinium_pka, pyridinium_pka, zwitterion_ratio
 from qsar.descriptors.view import Molecule
 from qsar.graph import Graph
-from qsar.groups import Group, perceive
+from qsar.groups import Group, owners, perceive
 from qsar.structures import read_acid
 
 FAR = "CCCCCCC(=O)O"  # a carboxyl group out of reach
@@ -22,7 +22,7 @@ FAR = "CCCCCCC(=O)O"  # a carboxyl group out of reach
 def groups(smiles: str) -> tuple[Graph, list[Group], dict[int, Group]]:
     graph = read_acid(smiles).graph
     found = perceive(graph)
-    return graph, found, {a: group for group in reversed(found) for a in group.atoms}
+    return graph, found, owners(found)
 
 
 def first(smiles: str, kind: str) -> tuple[Graph, Group, dict[int, Group]]:

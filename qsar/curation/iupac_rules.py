@@ -15,7 +15,7 @@ from rdkit import Chem
 
 from qsar.basicity import amine_pka
 from qsar.curation.isomer_labels import is_isomer_word
-from qsar.groups import perceive
+from qsar.groups import owners, perceive
 from qsar.structures import Acid
 
 COLDEST, WARMEST = 15.0, 40.0
@@ -151,7 +151,7 @@ _STRONG_BASES = frozenset({"ammonium", "amidinium", "imidazolium"})
 def unclear_nitrogen(acid: Acid) -> bool:
     """Whether a nitrogen could lose or take a proton in the range where the carboxyl group does."""
     groups = perceive(acid.graph)
-    group_of = {a: group for group in reversed(groups) for a in group.atoms}
+    group_of = owners(groups)
     for group in groups:
         if group.kind in _UNCLEAR_NITROGEN:
             return True

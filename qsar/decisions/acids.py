@@ -238,8 +238,9 @@ def _weak_base(structure: Acid) -> float | None:
     """Estimated pKa of the strongest aniline that is neutral where the carboxyl proton leaves; None without one."""
     from qsar.basicity import anilinium_pka
     from qsar.descriptors import Molecule
+    from qsar.groups import owners
 
     groups = Molecule(structure.graph).groups
-    group_of = {a: group for group in reversed(groups) for a in group.atoms}
+    group_of = owners(groups)
     found = [anilinium_pka(structure.graph, g.atoms[0], group_of) for g in groups if g.kind == "amino"]
     return max((pka for pka in found if pka is not None and pka > 0.0), default=None)

@@ -14,7 +14,7 @@ from functools import cached_property
 from qsar.basicity import pyridinium_pka, zwitterion_ratio
 from qsar.constants.functional_groups import FunctionalGroup, functional_groups
 from qsar.graph import Graph
-from qsar.groups import WITHDRAWING, Group, perceive
+from qsar.groups import WITHDRAWING, Group, owners, perceive
 
 _ORIENTED = {
     # kind: (through its carbonyl or sulfonyl atom, through nitrogen, through oxygen or sulfur)
@@ -95,7 +95,7 @@ def _with_basicity(graph: Graph, groups: list[Group]) -> list[Group]:
     """Take the proton from ring nitrogens that are too weak a base, and give it to anilines that are strong enough."""
     if not any(group.kind in ("pyridinium", "amino") for group in groups):
         return groups
-    group_of = {a: group for group in reversed(groups) for a in group.atoms}
+    group_of = owners(groups)
     result = []
     for group in groups:
         if group.kind == "pyridinium" and pyridinium_pka(graph, group, group_of) < _PROTONATED_ABOVE:

@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from qsar.basicity import amine_pka, anilinium_pka, pyridinium_pka, zwitterion_ratio
 from qsar.descriptors import SiteView
-from qsar.groups import CATIONIC
+from qsar.groups import CATIONIC, owners
 
 Floats = NDArray[np.float64]
 
@@ -173,7 +173,7 @@ def basic_nitrogen(view: SiteView) -> list[tuple[int, str]]:
     """
     if not any(t.kind in ("pyridinium", "imidazolium", "amino", "ammonium") for t in view.terms):
         return []
-    group_of = {a: group for group in reversed(view.molecule.groups) for a in group.atoms}
+    group_of = owners(view.molecule.groups)
     graph = view.graph
     found: dict[str, int] = {}
     for term in view.terms:
@@ -189,8 +189,7 @@ def basic_nitrogen(view: SiteView) -> list[tuple[int, str]]:
             if ratio is not None:
                 doubt, sentence = _aniline_sentence(ratio, anilinium_pka(graph, term.anchor, group_of))
                 found.update({sentence: doubt} if sentence else {})
-            elif term.kind == "ammonium" and amine_pka(graph, term.anchor, group_of) < _WEAK_AMINE:
-                pka = amine_pka(graph, term.anchor, group_of)
+            elif term.kind == "ammonium" and (pka := amine_pka(graph, term.anchor, group_of)) < _WEAK_AMINE:
                 found[f"an amine made weak by what it carries (estimated pKa {pka:.1f}) is taken as protonated: "
                       f"{_TWO_PROTONS}"] = 2  # fmt: skip
     return [(doubt, sentence) for sentence, doubt in found.items()]

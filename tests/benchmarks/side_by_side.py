@@ -25,6 +25,7 @@ _model = None
 
 
 def begin() -> None:
+    """Load the model into this process and make its imports and tables."""
     global _model
     from qsar.model import load_model
 
@@ -33,6 +34,7 @@ def begin() -> None:
 
 
 def measure(start: int) -> Timing:
+    """Time one block of structures, from number `start` on, in the three ways."""
     from rdkit import Chem
     from rdkit.Chem import Descriptors, rdFingerprintGenerator
     from rdkit.Chem.MolStandardize import rdMolStandardize
