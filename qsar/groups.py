@@ -8,7 +8,7 @@ measured, and by the attribution as players.
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from qsar.graph import Graph
 
@@ -20,8 +20,7 @@ CATIONIC = ("ammonium", "amidinium", "imidazolium", "pyridinium", "quaternary_n"
 ANIONIC = ("carboxylate", "sulfonate", "phosphonate")
 
 
-@dataclass(frozen=True, slots=True)
-class Group:
+class Group(NamedTuple):
     """A functional group.
 
     Attributes

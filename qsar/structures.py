@@ -61,6 +61,10 @@ class Acid:
         """Atoms and bonds as plain lists in the order of `mol`, read once."""
         return Graph.from_mol(self.drawn, stereo=_has_stereo(self.smiles), order=self.order)
 
+    def forget_graph(self) -> None:
+        """Let go of the graph; it is read again when it is asked for."""
+        self.__dict__.pop("graph", None)
+
     def __reduce__(self) -> tuple[object, ...]:
         return acid_from_smiles_and_notes, (self.smiles, self.notes)
 
@@ -148,35 +152,35 @@ def _plain_acid(text: str) -> Acid | None:
     if Chem.SanitizeMol(mol, _ENOUGH, catchErrors=True) != Chem.SanitizeFlags.SANITIZE_NONE:
         return None
     smiles = Chem.MolToSmiles(mol)
-    order = tuple(map(int, mol.GetProp("_smilesAtomOutputOrder")[1:-1].rstrip(",").split(",")))
-    graph = Graph.from_mol(mol, stereo=False, order=order)
-    sites = _plain_sites(graph)
-    if sites is None:
-        return None
-    acid = Acid(smiles, mol, sites, (), order)
-    acid.__dict__["graph"] = graph  # it is needed anyhow, and has been read already
-    return acid
+    order = _order_written(mol)
+    return _with_graph(smiles, mol, Graph.from_mol(mol, stereo=False, order=order, smiles=smiles), order)
+
+
+def _order_written(mol: Chem.Mol) -> tuple[int, ...]:
+    """Order in which the atoms of a molecule were last written."""
+    return tuple(map(int, mol.GetProp("_smilesAtomOutputOrder")[1:-1].rstrip(",").split(",")))
 
 
 def _plain_sites(graph: Graph) -> tuple[int, ...] | None:
     """Carboxyl carbons; None where there is none, or anything that :func:`_carboxyl_sites` has a word about."""
     sites = []
-    for carbon, (number, orders) in enumerate(zip(graph.numbers, graph.orders, strict=True)):
-        if number == 8 and 8 in (graph.numbers[b] for b in graph.neighbours[carbon]):
+    numbers, all_neighbours, all_orders = graph.numbers, graph.neighbours, graph.orders
+    acyls: dict[int, int] = {}  # carbon of each C=O, and how many it has
+    hydroxyls: dict[int, int] = {}
+    for a, number in enumerate(numbers):
+        if number != 8:
+            continue
+        neighbours = all_neighbours[a]
+        if len(neighbours) == 1:
+            counts = acyls if all_orders[a][0] == 2.0 else hydroxyls
+            counts[neighbours[0]] = counts.get(neighbours[0], 0) + 1
+        if any(numbers[b] == 8 for b in neighbours):
             return None
-        if number != 6 or 2.0 not in orders or graph.aromatic[carbon]:
+    for carbon in sorted(acyls.keys() & hydroxyls.keys()):
+        if numbers[carbon] != 6 or graph.aromatic[carbon] or acyls[carbon] != 1:
             continue
-        acyl = hydroxyl = 0
-        others = []
-        for b, order in zip(graph.neighbours[carbon], orders, strict=True):
-            if graph.numbers[b] == 8 and len(graph.neighbours[b]) == 1:
-                acyl += order == 2.0
-                hydroxyl += order == 1.0
-            else:
-                others.append(b)
-        if acyl != 1 or not hydroxyl:
-            continue
-        if hydroxyl > 1 or (others and graph.numbers[others[0]] != 6):
+        others = [b for b in all_neighbours[carbon] if numbers[b] != 8 or len(all_neighbours[b]) > 1]
+        if hydroxyls[carbon] > 1 or (others and numbers[others[0]] != 6):
             return None
         sites.append(carbon)
     return tuple(sites) if 0 < len(sites) <= MAX_SITES else None
@@ -188,11 +192,26 @@ def _plain_acid_with_stereo(text: str) -> Acid | None:
         return None
     if "[C" in text and any(mol.GetAtomWithIdx(a).GetNumRadicalElectrons() for a in range(mol.GetNumAtoms())):
         return None
-    mol = Chem.MolFromSmiles(Chem.MolToSmiles(mol), _WITH_STEREO)  # canonical atom order, as in `acid_from_mol`
+    written = Chem.MolToSmiles(mol)
+    if written.replace("@@", "@").count("@") <= 1:  # nothing in it that reading and writing once more could settle
+        order = _order_written(mol)
+        return _with_graph(written, mol, Graph.from_mol(mol, order=order, smiles=written), order)
+    mol = Chem.MolFromSmiles(written, _WITH_STEREO)  # canonical atom order, as in `acid_from_mol`
     if mol is None:
         return None
-    smiles = Chem.MolToSmiles(mol)  # writing what was read may settle stereo marks once more
-    return Acid(smiles, mol, _carboxyl_sites(mol))
+    graph = Graph.from_mol(mol, smiles=written)
+    # Writing what was read may settle stereo marks once more.
+    return _with_graph(Chem.MolToSmiles(mol), mol, graph)
+
+
+def _with_graph(smiles: str, mol: Chem.Mol, graph: Graph, order: tuple[int, ...] | None = None) -> Acid | None:
+    """An acid whose graph has been read already; None where its carboxyl groups need a word."""
+    sites = _plain_sites(graph)
+    if sites is None:
+        return None
+    acid = Acid(smiles, mol, sites, (), order)
+    acid.__dict__["graph"] = graph
+    return acid
 
 
 def acid_from_mol(mol: Chem.Mol) -> Acid:

@@ -16,6 +16,7 @@ _COLUMNS = columns(
     "nh_ring5 nh_ring6 nh_ring7 nh_ring6_rigid "
     "cooh_ring6 cooh_ring7 cooh_ring7_rigid hindered_monoanion"
 )
+_NOTHING = dict.fromkeys((c.name for c in _COLUMNS), 0.0)
 _CARBOXYL = ("carboxyl",)
 
 
@@ -41,7 +42,7 @@ def _rigid(view: SiteView, anchor: int) -> bool:
 
 
 def _compute(view: SiteView) -> list[float]:
-    out = dict.fromkeys((c.name for c in _COLUMNS), 0.0)
+    out = _NOTHING.copy()
     ortho_oh = 0
     for term in view.terms:
         for x in donors(view, term):

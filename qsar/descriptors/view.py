@@ -8,8 +8,8 @@ through columns on which the model is constrained to be monotone.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from functools import cached_property
+from typing import NamedTuple
 
 from qsar.basicity import pyridinium_pka, zwitterion_ratio
 from qsar.constants.functional_groups import FunctionalGroup, functional_groups
@@ -26,8 +26,7 @@ _ORIENTED = {
 }
 
 
-@dataclass(frozen=True, slots=True)
-class Term:
+class Term(NamedTuple):
     """A functional group as one site sees it.
 
     Attributes
@@ -72,11 +71,13 @@ class Molecule:
             else:
                 others.append(group)
         self.others = others
-        n = len(graph.numbers)
         self.scaffold_hydrogens = list(graph.hydrogens)
         for _, carrier in self.withdrawing:
             self.scaffold_hydrogens[carrier] += 1
-        self.unsaturated = [not graph.saturated(a) for a in range(n)]
+        self.unsaturated = [
+            aromatic or orders.count(1.0) != len(orders)
+            for aromatic, orders in zip(graph.aromatic, graph.orders, strict=True)
+        ]
         for a in self.set_apart:
             self.unsaturated[a] = False
         self._around: dict[int, Surroundings] = {}

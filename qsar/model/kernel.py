@@ -77,10 +77,24 @@ class Scaling:
         return scaled
 
 
-def covariance(a: Floats, b: Floats, settings: KernelSettings) -> Floats:
-    """Prior covariance of the scaffold part between scaled rows `a` (n, d) and `b` (m, d); shape (n, m)."""
+def lengths(a: Floats) -> Floats:
+    """Squared length of each row of `a` (n, d); shape (n,)."""
+    result: Floats = np.einsum("ij,ij->i", a, a)
+    return result
+
+
+def covariance(a: Floats, b: Floats, settings: KernelSettings, lengths_of_b: Floats | None = None) -> Floats:
+    """Prior covariance of the scaffold part between scaled rows `a` (n, d) and `b` (m, d); shape (n, m).
+
+    Parameters
+    ----------
+    a, b : ndarray
+    settings : KernelSettings
+    lengths_of_b : ndarray, shape (m,), optional
+        What `lengths` gives for `b`, where it is known already.
+    """
     product = a @ b.T
-    r: Floats = np.einsum("ij,ij->i", a, a)[:, None] + np.einsum("ij,ij->i", b, b)[None]
+    r: Floats = lengths(a)[:, None] + (lengths(b) if lengths_of_b is None else lengths_of_b)[None]
     # From here on in place: of large matrices, making new ones takes longer than reckoning.
     scratch = 2.0 * product
     r -= scratch  # squared distance

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,7 +17,7 @@ from qsar.descriptors import LOWERS
 from qsar.model.boosting import BoostingSettings, Trees, fit_booster, trees_of
 from qsar.model.edges import Edges
 from qsar.model.inducing import MOST_EXACT
-from qsar.model.kernel import KernelSettings, KernelTrend, Scaling, basis_points, covariance
+from qsar.model.kernel import KernelSettings, KernelTrend, Scaling, basis_points, covariance, lengths
 from qsar.model.training_set import Targets, TrainingSet, latent_targets
 
 Floats = NDArray[np.float64]
@@ -76,6 +77,10 @@ class Members:
     offset: float
     trees: Trees
 
+    @cached_property
+    def _lengths(self) -> Floats:
+        return lengths(self.points)
+
     def predict(self, x: Floats) -> tuple[Floats, Floats]:
         """Micro pKa by each member.
 
@@ -89,7 +94,7 @@ class Members:
             The trend alone and the booster's correction.
         """
         free, lowers = x[:, ~LOWERS], x[:, LOWERS]
-        k = covariance(self.scaling(free), self.points, self.settings.kernel)
+        k = covariance(self.scaling(free), self.points, self.settings.kernel, self._lengths)
         trend = self.offset - self.slopes @ lowers.T + self.dual @ k.T
         return trend, self.trees.predict(x)
 

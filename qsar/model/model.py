@@ -6,6 +6,7 @@ import gc
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass, replace
+from functools import cache, cached_property
 from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
@@ -97,16 +98,17 @@ class Prediction:
 
 @dataclass(frozen=True)
 class _Case:
-    """One configuration of one input while it is predicted."""
+    """One configuration of one input while it is predicted.
+
+    `measured` holds the row in the library of each step that was measured of the input itself, `remarks` what else a
+    user should know about it.
+    """
 
     acid: Acid
     views: list[SiteView]
     x: list[list[float]]
-
-
-def _case(acid: Acid) -> _Case:
-    views = edge_views(acid)
-    return _Case(acid, views, [site_descriptors(view) for view in views])
+    measured: dict[int, int]
+    remarks: tuple[str, ...]
 
 
 @contextmanager
@@ -119,6 +121,16 @@ def _no_collection() -> Iterator[None]:
     finally:
         if enabled:
             gc.enable()
+
+
+@cache
+def _keep_freed_memory() -> None:
+    """Have the allocator keep what chunks free for the next one, once a process.
+
+    The matrices of a chunk are a few MB each. The C library hands such blocks back to the system at once, and gets
+    them again page by page, until it has seen a larger one freed. This one is never written to, so it costs nothing.
+    """
+    np.empty(1 << 24, dtype=np.uint8)
 
 
 @dataclass(frozen=True, eq=False)
@@ -181,6 +193,8 @@ class Model:
         if not 0.5 <= coverage <= 0.99:
             raise UserError(f"coverage {coverage:g} is out of range; give a fraction from 0.5 to 0.99")
         results: list[Prediction] = []
+        if len(acids) >= _AT_ONCE:
+            _keep_freed_memory()
         with _no_collection():
             for start in range(0, len(acids), _AT_ONCE):
                 results += self._predict(acids[start : start + _AT_ONCE], coverage)
@@ -200,7 +214,11 @@ class Model:
                 continue
             isomers, note = configurations(acid)
             own = list(range(len(cases), len(cases) + len(isomers)))
-            cases.extend(_case(a) for a in isomers)
+            measured = self.library.rows_of(acid.smiles)
+            remarks = (*acid.notes, *advise(acid.drawn, acid.graph))
+            for isomer in isomers:
+                views = edge_views(isomer)
+                cases.append(_Case(isomer, views, [site_descriptors(view) for view in views], measured, remarks))
             places.append((i, own, note))
             results[i] = Prediction(acid.smiles, [], None, acid)
         if cases:
@@ -208,8 +226,9 @@ class Model:
             for i, own, note in places:
                 first = results[i]
                 assert first is not None and first.acid is not None
-                joined = _join([steps[k] for k in own], note)
-                results[i] = Prediction(first.structure, self._finish(first.acid, joined), None, first.acid)
+                results[i] = Prediction(first.structure, _join([steps[k] for k in own], note), None, first.acid)
+                if not isinstance(acids[i], Acid):
+                    first.acid.forget_graph()  # the largest part of what would stay in memory
         return Predictions(r for r in results if r is not None)
 
     def _predict_cases(self, cases: list[_Case], coverage: float) -> list[list[StepPrediction]]:
@@ -245,6 +264,7 @@ class Model:
             verdict, reasons = self.domain.judge(
                 views[k], float(scale[k]), best.name or best.smiles or "an acid without a name", best.distance
             )
+            row = cases[c].measured.get(step)
             result[c].append(
                 StepPrediction(
                     step,
@@ -253,50 +273,32 @@ class Model:
                     float(max(high[k], pka[k])),
                     coverage,
                     verdict,
-                    (*reasons, *cases[c].acid.notes),
+                    tuple(dict.fromkeys((*reasons, *cases[c].remarks))),
                     best.smiles,
                     best.pka,
                     best.distance,
-                    None,
-                    None,
+                    None if row is None else float(self.library.pka[row]),
+                    None if row is None else float(self.library.pka_without[row]),
                     self.name,
                     float(scale[k]),
                     found,
+                    "" if row is None else self.library.source[row],
+                    None if row is None else float(self.library.uncertainty[row]),
                 )
             )
         return result
 
     def _neighbour(self, row: int, distance: float) -> Neighbour:
-        library = self.library
-        return Neighbour(
-            library.smiles[row],
-            library.name[row],
-            int(library.step[row]),
-            float(library.pka[row]),
-            distance,
-            library.source[row],
-        )
+        smiles, name, step, pka, source = self._measured[row]
+        return Neighbour(smiles, name, step, pka, distance, source)
 
-    def _finish(self, acid: Acid, steps: list[StepPrediction]) -> list[StepPrediction]:
-        """Add what was measured of the acid itself, and what else a user should know about it."""
-        known = self.library.rows_of(acid.smiles)
-        advice = advise(acid.drawn, acid.graph)
-        finished = []
-        for s in steps:
-            row = known.get(s.step)
-            measured = None if row is None else float(self.library.pka[row])
-            without = None if row is None else float(self.library.pka_without[row])
-            finished.append(
-                replace(
-                    s,
-                    reasons=tuple(dict.fromkeys((*s.reasons, *acid.notes, *advice))),
-                    measured=measured,
-                    pka_without=without,
-                    measured_source="" if row is None else self.library.source[row],
-                    measured_uncertainty=None if row is None else float(self.library.uncertainty[row]),
-                )
-            )
-        return finished
+    @cached_property
+    def _measured(self) -> list[tuple[str, str, int, float, str]]:
+        """What a `Neighbour` says about each measured step but its distance."""
+        library = self.library
+        return list(
+            zip(library.smiles, library.name, library.step.tolist(), library.pka.tolist(), library.source, strict=True)
+        )
 
     def explain(self, acid: str | Acid, coverage: float = 0.9) -> tuple[Explanation, ...]:
         """What each substituent of an acid contributed, one `Explanation` a step.

@@ -9,7 +9,7 @@ from small_models import small_model
 from qsar.descriptors import LOWERS
 from qsar.ionisation import edge_descriptors
 from qsar.model import Model
-from qsar.model.neighbours import Neighbours, sensitivities
+from qsar.model.neighbours import Neighbours, nearest, sensitivities
 from qsar.paths import reference_table
 from qsar.structures import read_acid
 from qsar.table import read_table
@@ -59,3 +59,15 @@ def test_a_measured_acid_is_its_own_nearest(model: Model) -> None:
         distances = [n.distance for n in step.neighbours]
         assert distances == sorted(distances)
         assert len(step.neighbours) == 5
+
+
+@pytest.mark.parametrize("columns", [4, 5, 31, 160, 161, 192, 1177])
+@pytest.mark.parametrize("decimals", [12, 1])
+def test_nearest_are_those_of_a_full_sort(columns: int, decimals: int) -> None:
+    """Against NumPy's stable sort, with and without ties, and with distances that must not be used."""
+    rng = np.random.default_rng(columns)
+    distances = rng.random((40, columns)).round(decimals)
+    distances[rng.random(distances.shape) < 0.1] = np.inf
+    distances[0] = np.inf
+    wanted = np.argsort(distances, axis=1, kind="stable")[:, :5]
+    np.testing.assert_array_equal(nearest(distances, 5), wanted)
