@@ -7,8 +7,12 @@ import hashlib
 import math
 from dataclasses import dataclass
 from pathlib import Path
+from typing import cast, get_args
 
+from qsar.conditions import DAVIES_LIMIT_M, Constant
 from qsar.errors import UserError
+from qsar.sources import as_printed
+from qsar.standard_state import at_zero_ionic_strength
 from qsar.structures import Acid, StructureError, read_acid
 
 COLUMNS = (
@@ -37,9 +41,11 @@ class Measurement:
     step : int
         Carboxyl protons lost, counted from 1.
     pka : float
+        At ionic strength 0.
     uncertainty : float
         Standard uncertainty, pKa units.
     name, family, source : str
+        The source says what is printed there, where that was brought to ionic strength 0.
     """
 
     acid: Acid
@@ -64,7 +70,9 @@ def read_table(path: Path, default_uncertainty: float = 0.05) -> list[Measuremen
     Returns
     -------
     list of Measurement
-        In the order of the file.
+        In the order of the file. Mixed and concentration constants at a stated ionic strength are brought to ionic
+        strength 0 (Davies 1962; see :mod:`qsar.conditions`), as curating a table does; a constant whose kind is not
+        stated counts as mixed there.
 
     Raises
     ------
@@ -117,14 +125,27 @@ def _measurement(path: Path, line: int, row: dict[str, str], default_uncertainty
         raise UserError(f"{path.name}, row {line}, column step: {step}, but the acid has {len(acid.sites)} COOH")
     if not (row["pka"] or "").strip():
         raise UserError(f"{path.name}, row {line}, column pka: empty")
+    strength = number("ionic_strength_m", 0.0)
+    if not 0.0 <= strength <= DAVIES_LIMIT_M:
+        raise UserError(
+            f"{path.name}, row {line}, column ionic_strength_m: {strength:g} mol/L; the value can be brought to ionic "
+            f"strength 0 from at most {DAVIES_LIMIT_M:g} mol/L, so leave the row out"
+        )
+    kind = (row.get("constant") or "").strip().casefold()
+    if kind not in ("", *get_args(Constant)):
+        raise UserError(f"{path.name}, row {line}, column constant: '{kind}'; give {', '.join(get_args(Constant))}")
+    pka, source = number("pka", 0.0), (row.get("source") or "").strip()
+    if strength and kind != "thermodynamic":
+        source = as_printed(source, pka, strength)
+        pka = at_zero_ionic_strength(acid, step, pka, strength, cast(Constant, kind or "mixed"))
     return Measurement(
         acid,
         step,
-        number("pka", 0.0),
+        pka,
         uncertainty,
         (row.get("name") or "").strip(),
         (row.get("family") or "").strip(),
-        (row.get("source") or "").strip(),
+        source,
     )
 
 

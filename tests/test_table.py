@@ -8,6 +8,7 @@ from pathlib import Path
 import pytest
 
 from qsar.errors import UserError
+from qsar.sources import key_of
 from qsar.table import COLUMNS, read_table, sha256
 
 
@@ -48,9 +49,40 @@ def test_default_uncertainty(tmp_path: Path) -> None:
     assert [m.uncertainty for m in read_table(path, 0.11)] == [0.11, 0.2]
 
 
+# Constants in 0.1 mol/L salt (Martell & Smith, Critical Stability Constants) and at ionic strength 0 (acetic acid:
+# Harned & Ehlers 1933; succinic acid: Pinching & Bates 1950; glycine: Owen 1934), from memory.
+@pytest.mark.parametrize(
+    ("smiles", "step", "in_salt", "kind", "wanted"),
+    [
+        ("CC(=O)O", 1, 4.56, "concentration", 4.756),
+        ("CC(=O)O", 1, 4.65, "mixed", 4.756),
+        ("O=C(O)CCC(=O)O", 1, 4.00, "concentration", 4.207),
+        ("O=C(O)CCC(=O)O", 2, 5.24, "concentration", 5.638),
+        ("NCC(=O)O", 1, 2.36, "concentration", 2.350),
+    ],
+)
+def test_constants_in_salt_become_thermodynamic(
+    smiles: str, step: int, in_salt: float, kind: str, wanted: float, tmp_path: Path
+) -> None:
+    text = f"smiles,pka,step,ionic_strength_m,constant,source\n{smiles},{in_salt},{step},0.1,{kind},KEY\n"
+    (row,) = read_table(write(tmp_path, text))
+    assert row.pka == pytest.approx(wanted, abs=0.05)
+    assert row.source == f"KEY; as printed {in_salt:g} at I = 0.1 mol/L"
+    assert key_of(row.source) == "KEY"
+
+
+def test_a_constant_of_a_kind_that_is_not_stated_counts_as_mixed(tmp_path: Path) -> None:
+    header = "smiles,pka,ionic_strength_m,constant\n"
+    rows = read_table(write(tmp_path, header + "CC(=O)O,4.65,0.1,\nCC(=O)O,4.65,0.1,mixed\nCC(=O)O,4.76,,mixed\n"))
+    assert rows[0].pka == rows[1].pka > 4.65
+    assert (rows[2].pka, rows[2].source) == (4.76, "")
+
+
 @pytest.mark.parametrize(
     ("text", "words"),
     [
+        ("smiles,pka,ionic_strength_m\nCC(=O)O,4.7,1\n", ["row 2", "ionic_strength_m", "0.5 mol/L"]),
+        ("smiles,pka,constant\nCC(=O)O,4.7,apparent\n", ["row 2", "constant", "apparent", "mixed"]),
         ("", ["no column"]),
         ("smiles,pka\n", ["no rows"]),
         ("smiles,value\nCC(=O)O,4.7\n", ["pka", "value"]),

@@ -110,6 +110,7 @@ def _held_out(args: argparse.Namespace, a: Model, b: Model) -> list[Pair]:
 def _rows(args: argparse.Namespace, a: Model, b: Model) -> list[Measurement]:
     from qsar.commands.train import leaving_out
     from qsar.model.user_table import read_date, read_user_table
+    from qsar.sources import key_of
 
     table = read_user_table(args.data)
     if table.suspects and not args.keep_suspected:
@@ -125,7 +126,7 @@ def _rows(args: argparse.Namespace, a: Model, b: Model) -> list[Measurement]:
         say(f"acidity: {len(table.measurements)} rows measured after {day.isoformat()}")
         if not table.measurements:
             raise UserError(f"{args.data}: no row is dated after {day.isoformat()} (column date)")
-    rows = [m for m in table.measurements if args.source in (None, m.source)]
+    rows = [m for m in table.measurements if args.source in (None, key_of(m.source))]
     if not rows:
         raise UserError(f"{args.data}: no row of source {args.source}")
     return rows

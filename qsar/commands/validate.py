@@ -79,29 +79,30 @@ def run(args: argparse.Namespace) -> int:
 
 
 def _open_rows(model: Model, folder: Path) -> int:
-    from qsar.curation.iupac import sort_iupac
+    from qsar.curation.iupac import in_standard_state, sort_iupac
     from qsar.progress import progress
     from qsar.validation.judged import judge
     from qsar.validation.metrics import LEVELS
-    from qsar.validation.open_rows import as_text, find_open_file
+    from qsar.validation.open_rows import as_printed, as_text, find_open_file
 
     path = find_open_file(folder)
     data = sort_iupac(path)
     with progress(lambda: len(LEVELS) + 1, "parts", wanted=True) as done:
-        judged = judge(model, data.steps, done)
+        judged = judge(model, in_standard_state(data.steps), done)
     print(f"{model.name} on {path.name}: {len(data.excluded)} rows left out by rule")
     print(as_text(judged))
+    print(as_printed(judged, [step.pka for step in data.steps]))
     return 0
 
 
 def _with_open_rows(model: Model, args: argparse.Namespace) -> int:
-    from qsar.curation.iupac import read_iupac
+    from qsar.curation.iupac import in_standard_state, read_iupac
     from qsar.progress import progress
     from qsar.validation.open_rows import find_open_file
     from qsar.validation.report import write
     from qsar.validation.with_open_rows import compare, train_with
 
-    steps = read_iupac(find_open_file(args.open_data))
+    steps = in_standard_state(read_iupac(find_open_file(args.open_data)))
     with progress(lambda: model.members.settings.folds, "folds", wanted=True) as done:
         richer = train_with(model, steps, done, args.jobs)
     sections = compare(model, richer, steps)

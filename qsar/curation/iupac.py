@@ -16,14 +16,16 @@ import csv
 import statistics
 from collections import defaultdict
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import lru_cache
 from itertools import pairwise
 from pathlib import Path
 
+from qsar.conditions import CONSTANT_KINDS
 from qsar.curation import iupac_rules as rules
 from qsar.curation.isomer_labels import isomer, one_spelling
 from qsar.errors import UserError
+from qsar.standard_state import at_zero_ionic_strength
 from qsar.structures import Acid, StructureError, read_acid
 
 COLUMNS = ("SMILES", "pka_type", "pka_value", "T", "remarks", "assessment", "ref", "pressure", "cosolvent")
@@ -118,6 +120,25 @@ class _Row:
         if self.ionic is None:
             return 2 if self.kind else 0
         return 0 if self.ionic <= 0.01 else 1 if self.ionic <= 0.2 else 2
+
+
+def in_standard_state(steps: Sequence[OpenStep]) -> list[OpenStep]:
+    """The steps as thermodynamic constants, which is what a model predicts.
+
+    Mixed and concentration constants at a stated ionic strength are brought to 0; see :mod:`qsar.standard_state`. What
+    does not state both, its medium and one kind of constant, stays as it is: nothing is guessed about what judges.
+    """
+    moved = []
+    for step in steps:
+        kinds = [kind for kind in CONSTANT_KINDS if f"{kind} constant" in step.note]
+        if step.ionic_strength_m and len(kinds) == 1:
+            acid = read_acid(step.smiles)
+            pka = at_zero_ionic_strength(
+                acid, step.step, step.pka, step.ionic_strength_m, kinds[0], step.temperature_c
+            )
+            step = replace(step, pka=pka)
+        moved.append(step)
+    return moved
 
 
 def read_iupac(path: Path) -> list[OpenStep]:

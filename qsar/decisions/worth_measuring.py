@@ -225,9 +225,10 @@ def setting_verdict(
     """Verdict on a setting that would follow the measured value.
 
     `holds` is where the present setting is within tolerance, `setting` the beginning of the sentence.  The
-    measurement that settles it has a 95 % interval no wider than `holds`.
+    measurement that settles it has a 95 % interval no wider than `holds`; where that is open at one end, one that does
+    not reach the other end from the present estimate.
     """
-    needed = 0.5 * (holds[1] - holds[0]) if probability_wrong > risk else None
+    needed = _settles(pka, holds) if probability_wrong > risk else None
     which = f" (step {step})" if n_steps > 1 else ""
     head = f"{setting} {say_ranges([holds])}{which}, now {pka:.2f} ± {_Z95 * sd:.2f} (95 %)"
     if probability_wrong <= NEGLIGIBLE_RISK:
@@ -247,6 +248,13 @@ def setting_verdict(
             f"± {needed:.2f} first, or set the pH with a meter"
         )
     return Verdict(setting, step, pka, sd, (holds,), probability_wrong, needed, f"{head}; {tail}.")
+
+
+def _settles(pka: float, holds: tuple[float, float]) -> float | None:
+    ends = [end for end in holds if np.isfinite(end)]
+    if len(ends) == 2:
+        return 0.5 * (ends[1] - ends[0])
+    return abs(ends[0] - pka) if ends else None
 
 
 def ranges_where(grid: Floats, margin: Floats) -> tuple[tuple[float, float], ...]:

@@ -7,9 +7,11 @@ interval at level :math:`1-\alpha` lies between the :math:`\alpha`-quantiles of
 
 over the measured steps i of the same class. A new acid is sometimes an analogue of measured ones and sometimes a
 stranger, so every measured step gives two scores: one with its acid left out among others drawn at random, one with
-all its near analogues left out too. Its guarantee is marginal: at least :math:`1 - 2\alpha` of exchangeable
-acids, in practice close to :math:`1-\alpha`. The scale s is the expected error, a non-negative linear function of
-evidence of difficulty fitted to the out-of-fold errors, which makes intervals differ between easy and hard acids.
+all its near analogues left out too. Each kind of score gives an interval, and the one that is told holds both, so
+that it is right for analogues and for strangers, not only for their mixture. The guarantee of each is marginal: at
+least :math:`1 - 2\alpha` of exchangeable acids, in practice close to :math:`1-\alpha`. The scale s is the expected
+error, a non-negative linear function of evidence of difficulty fitted to the out-of-fold errors, which makes intervals
+differ between easy and hard acids.
 """
 
 from __future__ import annotations
@@ -98,12 +100,12 @@ class Calibration:
             used = np.flatnonzero(np.isin(self.label, _BORROWS.get(int(value), (int(value),))))
             if len(used) < _LEAST_OF_CLASS:
                 used = np.arange(len(self.scores))
-            centre = np.tile(by_member[:, rows].T[:, self.member[used]], 2)
-            both = np.concatenate([self.scores[used], self.stranger_scores[used]])
-            reach = scale[rows][:, None] * both
-            low[rows] = _order_statistic(centre - reach, 1.0 - coverage, upper=False)
-            centre += reach
-            high[rows] = _order_statistic(centre, coverage, upper=True)
+            centre = by_member[:, rows].T[:, self.member[used]]
+            low[rows], high[rows] = np.inf, -np.inf
+            for scores in (self.scores, self.stranger_scores):
+                reach = scale[rows][:, None] * scores[used]
+                low[rows] = np.minimum(low[rows], _order_statistic(centre - reach, 1.0 - coverage, upper=False))
+                high[rows] = np.maximum(high[rows], _order_statistic(centre + reach, coverage, upper=True))
         return low, high
 
 

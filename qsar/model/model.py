@@ -24,6 +24,7 @@ from qsar.model.members import Members
 from qsar.model.neighbours import Neighbours, nearest
 from qsar.model.network_steps import steps_of
 from qsar.notebook import Predictions
+from qsar.sources import printed
 from qsar.structures import Acid, StructureError, read_acid
 
 if TYPE_CHECKING:
@@ -273,7 +274,7 @@ class Model:
                     float(max(high[k], pka[k])),
                     coverage,
                     verdict,
-                    tuple(dict.fromkeys((*reasons, *cases[c].remarks))),
+                    tuple(dict.fromkeys((*reasons, *cases[c].remarks, *self._about_value(row)))),
                     best.smiles,
                     best.pka,
                     best.distance,
@@ -287,6 +288,11 @@ class Model:
                 )
             )
         return result
+
+    def _about_value(self, row: int | None) -> tuple[str, ...]:
+        """What to say of the measured value of a row."""
+        text = "" if row is None else printed(self.library.source[row])
+        return (f"the measured value was brought to ionic strength 0 – {text}",) if text else ()
 
     def _neighbour(self, row: int, distance: float) -> Neighbour:
         smiles, name, step, pka, source = self._measured[row]

@@ -129,7 +129,7 @@ def _assemble(
         return _evidence_without(members, neighbours, x, step_fold, error, correction_size, defect, sparse)
 
     evidence = evidence_without(step_fold, _defects(data, micro))
-    strangers, stranger_fold = without_analogues(data, members, neighbours)
+    strangers, stranger_fold = without_analogues(data, members, neighbours) or (micro, fold)
     stranger_error = np.abs(data.pka - data.steps(strangers))
     stranger_evidence = evidence_without(stranger_fold[data.step_acid], _defects(data, strangers))
     coefficients = fit_scale(np.vstack([evidence, stranger_evidence]), np.concatenate([error, stranger_error]))
@@ -183,7 +183,7 @@ def _evidence_without(
     return np.vstack(parts)
 
 
-def without_analogues(data: TrainingSet, members: Members, neighbours: Neighbours) -> tuple[Floats, Ints]:
+def without_analogues(data: TrainingSet, members: Members, neighbours: Neighbours) -> tuple[Floats, Ints] | None:
     """Micro pKa of the training edges by trends that saw neither the acid nor its near analogues.
 
     Acids within `ANALOGUE_DISTANCE` of a leading one stay together (sphere exclusion), and whole groups are dealt
@@ -193,6 +193,7 @@ def without_analogues(data: TrainingSet, members: Members, neighbours: Neighbour
     -------
     micro : ndarray, shape (n_edges,)
     fold : ndarray of int, shape (n_acids,)
+        None instead of both where every acid is an analogue of every other: nothing would be left to learn from.
     """
     place = coordinates(members, neighbours.weights, data.x[data.first[:-1]])
     group = np.full(len(place), -1)
@@ -207,6 +208,8 @@ def without_analogues(data: TrainingSet, members: Members, neighbours: Neighbour
     fold = np.empty(len(place), dtype=np.int64)
     load = np.zeros(STRANGER_FOLDS)
     leaders, sizes = np.unique(group, return_counts=True)
+    if len(leaders) == 1:
+        return None
     for leader, size in sorted(zip(leaders, sizes, strict=True), key=lambda pair: -pair[1]):
         emptiest = int(load.argmin())
         fold[group == leader] = emptiest

@@ -10,6 +10,7 @@ from datetime import date
 from pathlib import Path
 
 from qsar.errors import UserError
+from qsar.sources import key_of
 from qsar.table import Measurement, read_table
 
 PRECISE = 0.15  # pKa units; rows that are less certain count less than one
@@ -85,7 +86,7 @@ def read_user_table(path: Path) -> UserTable:
         for row in reader:
             dates.append(read_date(row.get("date") or "", f"{path.name}, row {reader.line_num}, column date"))
             suspected.append((row.get("suspected") or "").strip())
-    measurements = [replace(m, source=m.source or "in-house") for m in measurements]
+    measurements = [replace(m, source=m.source if key_of(m.source) else f"in-house{m.source}") for m in measurements]
     return UserTable(measurements, dates, suspected)
 
 

@@ -2,14 +2,13 @@
 
 from __future__ import annotations
 
-import csv
 import datetime
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from qsar import __version__, paths
+from qsar import __version__
 from qsar.attribution.drawing import plain_svg, signed, structure_svg, tint
 from qsar.attribution.explanation import Contribution, Explanation
 from qsar.attribution.tables import witness_words
@@ -17,6 +16,7 @@ from qsar.errors import UserError
 from qsar.files import atomic_path
 from qsar.report.dossier import dossier
 from qsar.report.ruler import ruler_svg
+from qsar.sources import key_of, publications
 
 if TYPE_CHECKING:
     from qsar.attribution import Explained
@@ -129,7 +129,7 @@ def write_report(
         signed=signed, css=_css, pairs=lambda line: witness_words(line.witnesses), path=bond_path
     )
     about = dossier(model, done)
-    cited = {e.source for sheet in sheets for e in sheet.evidence}
+    cited = {key_of(e.source) for sheet in sheets for e in sheet.evidence}
     text = environment.get_template("report.html").render(
         sheets=sheets,
         refused=[(r, a.error) for r, a in zip(records, answers, strict=True) if a.error is not None],
@@ -173,11 +173,7 @@ def bond_path(line: Contribution, explanation: Explanation) -> str:
 
 def _citations() -> dict[str, str]:
     """Publications of the measured values, by key."""
-    path = paths.sources_table()
-    if not path.is_file():
-        return {}
-    with path.open(encoding="utf-8", newline="") as handle:
-        return {
-            row["source"]: ", ".join(row[c] for c in ("authors", "title", "year", "table") if row.get(c))
-            for row in csv.DictReader(handle)
-        }
+    return {
+        key: ", ".join(row[c] for c in ("authors", "title", "year", "table") if row.get(c))
+        for key, row in publications().items()
+    }

@@ -2,16 +2,14 @@
 
 from __future__ import annotations
 
-import csv
 from collections.abc import Sequence
-from functools import cache
 from typing import TYPE_CHECKING, Any
 
 from qsar.advisories import advise
 from qsar.analogues import Position, positions
-from qsar.paths import sources_table
 from qsar.reading import Record
 from qsar.service.pictures import draw
+from qsar.sources import citation
 from qsar.writing import rows_of
 
 if TYPE_CHECKING:
@@ -21,18 +19,6 @@ if TYPE_CHECKING:
 
 WIDTH, HEIGHT = 560, 400
 PAPER_WIDTH, PAPER_HEIGHT = 280, 190
-
-
-@cache
-def _citations() -> dict[str, str]:
-    with sources_table().open(encoding="utf-8", newline="") as handle:
-        rows = list(csv.DictReader(handle))
-    return {r["source"]: " ".join(x for x in (r["authors"], r["title"], f"({r['year']})") if x) for r in rows}
-
-
-def citation(key: str) -> str:
-    """Publication behind the key of a source; the key itself for one that is not in the list."""
-    return _citations().get(key, key)
 
 
 def acid_view(model: Model, explained: Explained, step: int, *, for_paper: bool = False) -> dict[str, Any]:

@@ -17,6 +17,7 @@ from qsar.curation.families import family_of
 from qsar.errors import UserError
 from qsar.ionisation import edge_descriptors
 from qsar.model import Model, Prediction
+from qsar.sources import key_of
 from qsar.structures import Acid, read_acid
 from qsar.table import Measurement
 from qsar.validation.metrics import bootstrap
@@ -141,7 +142,7 @@ def shared_fold_pairs(a: Model, b: Model, coverage: float = 0.9, source: str | N
             raise UserError(f"{model.name}: structures are withheld, so its folds cannot be shared; give --data FILE")
         for k, smiles in enumerate(lib.smiles):
             key = (smiles, int(lib.step[k]), round(float(lib.pka[k]), 6))
-            if key not in rows and source in (None, lib.source[k]):
+            if key not in rows and source in (None, key_of(lib.source[k])):
                 rows[key] = Measurement(
                     read_acid(smiles),
                     int(lib.step[k]),

@@ -5,6 +5,8 @@ The rows judge; nothing of the model is set on them.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -47,6 +49,24 @@ def as_text(judged: Judged) -> str:
             f"         {cells[2].mean_absolute:9.3f} ({cells[2].n:3d})   {cells[3].mean_absolute:9.3f}"
         )
     lines += ["", *_coverage_lines(judged), "", *_verdict_lines(judged)]
+    return "\n".join(lines)
+
+
+def as_printed(judged: Judged, printed: Sequence[float]) -> str:
+    """The errors once more against the values as they are printed, whatever medium they belong to."""
+    raw = replace(judged, measured=np.array(printed))
+    moved = np.abs(raw.measured - judged.measured) > 1e-9
+    lines = [
+        "",
+        f"{int(moved.sum())} values above were brought to ionic strength 0 from the medium that their row states "
+        "(Davies); against the values as printed:",
+    ]
+    for name, rows in _groups(judged).items():
+        e, held = raw.errors(rows), raw.coverage(0.9, rows)
+        lines.append(
+            f"{name:40}  {e.mean_absolute:6.3f} ({e.n:3d}, {int((moved & rows).sum())} of them moved)   90 %: "
+            f"{100 * held.share:5.1f}{' ' if held.within else '!'}({100 * held.low:.0f}-{100 * held.high:.0f})"
+        )
     return "\n".join(lines)
 
 

@@ -11,7 +11,7 @@ from pathlib import Path
 
 import pytest
 
-from qsar.curation.iupac import COLUMNS, OpenStep, read_iupac, sort_iupac, sort_rows
+from qsar.curation.iupac import COLUMNS, OpenStep, in_standard_state, read_iupac, sort_iupac, sort_rows
 from qsar.curation.iupac_rules import ionic_strength, kind_of_constant
 from qsar.errors import UserError
 
@@ -234,3 +234,22 @@ def test_known_acids_of_the_open_file(open_data_path: Path) -> None:
         ("NCC(=O)NCC(=O)O", 1): 3.14,
     }.items():
         assert found[key] == pytest.approx(expected, abs=0.05), key
+
+
+@pytest.mark.parametrize(
+    ("remarks", "wanted"),
+    [
+        ("I=0.1(KCl), concentration constant", 4.56 + 0.21),
+        ("I=0.1(KCl), mixed constant", 4.56 + 0.11),
+        ("I=0.1(KCl)", 4.56),
+        ("C=0.003", 4.56),
+        ("C=0.003, mixed constant", 4.56),
+        ("thermodynamic", 4.56),
+    ],
+)
+def test_a_stated_medium_is_taken_out_by_the_equation_of_davies(remarks: str, wanted: float) -> None:
+    """Davies 1962 at 25 °C and 0.1 mol/L: minus log of the activity coefficient of a single charge is 0.107."""
+    step = only(open_row("CC(=O)O", "4.56", remarks=remarks))
+    (moved,) = in_standard_state([step])
+    assert moved.pka == pytest.approx(wanted, abs=0.015)
+    assert (moved.smiles, moved.step, moved.note) == (step.smiles, step.step, step.note)

@@ -97,6 +97,12 @@ def test_setting_needs_a_measurement_as_fine_as_its_tolerance() -> None:
     )
 
 
+def test_a_setting_that_holds_to_one_side_asks_for_a_measurement_up_to_its_flip() -> None:
+    verdict = setting_verdict("The recipe keeps pH 3.10 ± 0.1 for", 0.62, 0.79, (-np.inf, 0.98), 0.32)
+    assert verdict.measure_to == pytest.approx(0.36)
+    assert "measure the pKa to ± 0.36 first" in verdict.sentence
+
+
 def test_ranges() -> None:
     grid = np.linspace(0.0, 10.0, 101)
     assert ranges_where(grid, 5.2 - grid) == ((-np.inf, pytest.approx(5.2)),)

@@ -5,7 +5,9 @@ from __future__ import annotations
 import numpy as np
 from rdkit import Chem
 
+from qsar.model import Model
 from qsar.model.library import Library
+from qsar.sources import citation, printed
 
 
 def library(*smiles: str) -> Library:
@@ -69,3 +71,14 @@ def test_withheld_structures_are_never_found() -> None:
     assert lib.rows_of("") == {}
     assert lib.label(0)
     assert lib.label(1) == "acid 1"
+
+
+def test_a_value_that_was_brought_to_the_standard_state_says_what_is_printed(model: Model) -> None:
+    lib = model.library
+    row = next(k for k, source in enumerate(lib.source) if printed(source))
+    step = model.predict([lib.smiles[row]])[0].steps[lib.step[row] - 1]
+    assert step.measured == lib.pka[row]
+    assert any(printed(lib.source[row]) in reason for reason in step.reasons)
+    assert citation(lib.source[row]).endswith(printed(lib.source[row]))
+    assert printed("KEY") == ""
+    assert citation("no such key") == "no such key"

@@ -23,6 +23,7 @@ from qsar.model.bundle import arrays_of
 from qsar.model.members import Settings, fit_members, fold_of_acids
 from qsar.model.offset import estimate_offset, without_offset
 from qsar.model.resumable import deal_folds, fingerprint, fit_members_resumably
+from qsar.model.training import train
 from qsar.model.training_set import training_set
 from qsar.model.user_table import read_date, read_user_table, weights_of
 from qsar.table import Measurement
@@ -220,3 +221,12 @@ def test_too_few_acids_alone_are_refused(
     table = write_table(tmp_path / "few.csv", some[:10])
     assert cli.main(["train", "--data", str(table), "--only", "--models", str(tmp_path / "m")]) == 2
     assert "at least 20" in capsys.readouterr().err
+
+
+def test_a_table_of_analogues_alone_has_no_strangers() -> None:
+    """Values that are all alike leave nothing to tell acids apart by; made up."""
+    rows = [replace(m, pka=4.8) for m in reference_rows()[:40:2] if m.step == 1]
+    model = train(rows, "alike", QUICK)
+    np.testing.assert_array_equal(model.calibration.stranger_scores, model.calibration.scores)
+    step = model.predict(["CCCCCCC(=O)O"])[0].steps[0]
+    assert step.low <= 4.8 <= step.high
