@@ -8,11 +8,13 @@ from __future__ import annotations
 
 from typing import Any
 
-from rdkit import Chem
+import numpy as np
+from rdkit import Chem, Geometry
 from rdkit.Chem import rdDepictor
 from rdkit.Chem.Draw import rdMolDraw2D
 
 from qsar.attribution.explanation import Contribution, Explanation
+from qsar.attribution.labels import place_labels
 
 Colour = tuple[float, float, float]
 
@@ -96,12 +98,8 @@ def _draw(drawer: rdMolDraw2D.MolDraw2D, explanation: Explanation) -> None:
         for bond in mol.GetBonds():
             if bond.GetBeginAtomIdx() in members and bond.GetEndAtomIdx() in members:
                 bonds[bond.GetIdx()] = colour
-        _label(mol, line)
     options: Any = drawer.drawOptions()
     options.useBWAtomPalette()
-    options.setAnnotationColour((0.0, 0.0, 0.0))
-    options.setBondNoteColour((0.0, 0.0, 0.0))
-    options.annotationFontScale = 0.8
     options.padding = 0.09
     options.fillHighlights = True
     options.highlightRadius = 0.38
@@ -118,6 +116,7 @@ def _draw(drawer: rdMolDraw2D.MolDraw2D, explanation: Explanation) -> None:
         highlightBonds=list(bonds),
         highlightBondColors=bonds,
     )
+    _write_numbers(drawer, mol, [line for line in explanation.contributions if line.atoms])
     drawer.FinishDrawing()
 
 
@@ -153,14 +152,24 @@ def _in_state(explanation: Explanation) -> Chem.Mol:
     return result
 
 
-def _label(mol: Chem.Mol, line: Contribution) -> None:
-    """Put the number beside the outermost atom with the fewest bonds, or on the bond to a crowded lone atom."""
-    chosen = min(reversed(line.atoms), key=lambda a: mol.GetAtomWithIdx(a).GetDegree())
-    text = _drawable(signed(line.contribution))
-    if mol.GetAtomWithIdx(chosen).GetDegree() < 4:
-        mol.GetAtomWithIdx(chosen).SetProp("atomNote", text)
-    else:
-        mol.GetBondBetweenAtoms(line.path[-2], line.atoms[0]).SetProp("bondNote", text)
+def _write_numbers(drawer: rdMolDraw2D.MolDraw2D, mol: Chem.Mol, lines: list[Contribution]) -> None:
+    """Write each contribution beside its substituent."""
+    if not lines:
+        return
+    coordinates = [drawer.GetDrawCoords(a) for a in range(mol.GetNumAtoms())]
+    places = np.array([(p.x, p.y) for p in coordinates])
+    ends = [(bond.GetBeginAtomIdx(), bond.GetEndAtomIdx()) for bond in mol.GetBonds()]
+    texts = [_drawable(signed(line.contribution)) for line in lines]
+    bonds = places[np.array(ends)]
+    length = float(np.median(np.linalg.norm(bonds[:, 0] - bonds[:, 1], axis=1)))
+    height = min(drawer.Width() / 26, 0.45 * length)
+    options: Any = drawer.drawOptions()
+    canvas = (float(drawer.Width()), drawer.Height() * (1.0 - options.legendFraction))
+    drawer.SetFontSize(height)
+    drawer.SetColour((0.0, 0.0, 0.0))
+    middles = place_labels(texts, [places[list(line.atoms)] for line in lines], bonds, height, canvas)
+    for text, (x, y) in zip(texts, middles, strict=True):
+        drawer.DrawString(text, Geometry.Point2D(x, y), 0, True)
 
 
 def _drawable(text: str) -> str:

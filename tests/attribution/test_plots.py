@@ -6,10 +6,13 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from rdkit import Chem
+from rdkit.Chem import rdDepictor
 
 from qsar.attribution import explain, explain_many
 from qsar.attribution.drawing import LOWERS, RAISES, signed, structure_png, structure_svg, sum_in_words, tint
 from qsar.attribution.gallery import chain
+from qsar.attribution.labels import place_labels
 from qsar.attribution.plots import analogues_figure, distance_figure, save, steps_figure
 from qsar.model import Model
 
@@ -78,6 +81,26 @@ def test_structure_is_tinted_and_drawn_in_both_formats(model: Model, smiles: str
                 shades = {f"#{r + i:02X}{g + j:02X}{b + k:02X}" for i in (0, 1) for j in (0, 1) for k in (0, 1)}
                 assert any(shade in svg for shade in shades), line.substituent
         assert structure_png(e).startswith(b"\x89PNG")
+
+
+def test_numbers_stand_clear_of_bonds_and_of_each_other() -> None:
+    """On a hexagon with a chain, as RDKit draws them: no box holds a point of a bond, and no two boxes meet."""
+    mol = Chem.MolFromSmiles("CC(C)Cc1ccc(cc1)C(C)C(=O)O")
+    rdDepictor.Compute2DCoords(mol)
+    places = 60 * mol.GetConformer().GetPositions()[:, :2] + np.array([500.0, 300.0])
+    lines = places[[(b.GetBeginAtomIdx(), b.GetEndAtomIdx()) for b in mol.GetBonds()]]
+    texts, groups = ["-0.36", "+0.07", "-0.12"], [places[4:10], places[:4], places[11:12]]
+    found = np.array(place_labels(texts, groups, lines, 24.0, (1000.0, 600.0)))
+    half = np.array([0.5 * 5 * 0.5, 0.5]) * 24.0  # half a character is what digits are wide at least
+    for k, middle in enumerate(found):
+        assert ((middle > half) & (middle < np.array([1000.0, 600.0]) - half)).all()
+        for share in np.linspace(0.0, 1.0, 21):
+            points = lines[:, 0] * (1 - share) + lines[:, 1] * share
+            assert (np.abs(points - middle) > half).any(axis=1).all()
+        for other in found[k + 1 :]:
+            assert (np.abs(middle - other) > 2 * half).any()
+        nearest = np.linalg.norm(groups[k] - middle, axis=1).min()
+        assert nearest < 2.5 * 90  # bonds of 1.5 units
 
 
 def test_steps_show_every_contribution_with_its_sign(model: Model) -> None:
