@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
@@ -51,6 +50,11 @@ class Evaluator:
     _known: dict[str, Value] = field(default_factory=dict)
     _waiting: dict[str, list[Case]] = field(default_factory=dict)
 
+    def make_room(self) -> None:
+        """Forget all values once they are many; to be called before asking, for what was asked rests on them."""
+        if len(self._known) > _KEEP:
+            self._known.clear()
+
     def ask(self, molecule: Hypothetical) -> str:
         """Note a molecule for the next `run`; returns its key."""
         if molecule.key not in self._known and molecule.key not in self._waiting:
@@ -65,8 +69,6 @@ class Evaluator:
 
     def run(self) -> None:
         """Evaluate what was asked."""
-        if len(self._known) + len(self._waiting) > _KEEP:
-            self._known.clear()
         keys = list(self._waiting)
         flat = [(k, case) for k, key in enumerate(keys) for case in self._waiting[key]]
         members: list[Floats] = []
@@ -87,11 +89,6 @@ class Evaluator:
 
     def __getitem__(self, key: str) -> Value:
         return self._known[key]
-
-    def forget_all_but(self, keys: Sequence[str]) -> None:
-        """Drop remembered molecules, to bound the memory of a long run."""
-        kept = {key: self._known[key] for key in keys if key in self._known}
-        self._known = kept
 
     def _block(self, block: list[Case]) -> tuple[Floats, list[bool]]:
         """Micro pKa by member, shape (n_members, n), and whether each case is outside the domain."""

@@ -103,6 +103,7 @@ def explain_many(
     """
     predictions = model.predict(acids, coverage=coverage)
     evaluator = _evaluators.setdefault(model, Evaluator(model))
+    evaluator.make_room()
     networks = _networks(model, [p.acid for p in predictions if p.acid is not None and p.error is None])
     prepared: list[list[Game]] = []
     for prediction in predictions:

@@ -181,3 +181,19 @@ def test_an_input_that_is_no_acid_is_answered_with_its_reason(model: Model) -> N
     assert bad.error is not None and not bad.steps
     assert good.error is None and len(good.steps) == 1
     assert [e.pka for e in model.explain("ClCC(=O)O")] == [only(model, "ClCC(=O)O").pka]
+
+
+def test_what_is_remembered_of_earlier_acids_is_forgotten_between_acids_only(
+    model: Model, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """The second acid shares its parent with the first: it must be explained alike, however little is kept."""
+    acids = ["OC(=O)CCCCl", "OC(=O)CCCBr"]
+    wanted = [explain(model, s)[0] for s in acids]
+    monkeypatch.setattr("qsar.attribution.evaluate._KEEP", 1)
+    for _ in range(2):
+        for smiles, before in zip(acids, wanted, strict=True):
+            (again,) = explain(model, smiles)
+            assert again.parent_pka == pytest.approx(before.parent_pka, abs=1e-9)
+            assert [x.contribution for x in again.contributions] == pytest.approx(
+                [x.contribution for x in before.contributions], abs=1e-9
+            )
