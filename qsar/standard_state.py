@@ -8,6 +8,13 @@ from qsar.structures import Acid
 _MOST_POSITIVE = 2  # of the charges of a longer cation, most sit too far from the carboxyl group to count together
 
 
+def charge_that_counts(acid: Acid) -> int:
+    """Charge of the acid form that a correction for ionic strength reckons with, where its first proton leaves."""
+    from qsar.decisions.acids import charge_beside_carboxyl  # slow to import, and few rows ask for it
+
+    return min(charge_beside_carboxyl(acid), _MOST_POSITIVE)
+
+
 def at_zero_ionic_strength(
     acid: Acid, step: int, pka: float, ionic_strength_m: float, constant: Constant, temperature_c: float = 25.0
 ) -> float:
@@ -36,7 +43,5 @@ def at_zero_ionic_strength(
     """
     if constant == "thermodynamic" or not ionic_strength_m:
         return pka
-    from qsar.decisions.acids import charge_beside_carboxyl  # slow to import, and few rows ask for it
-
-    charge = min(charge_beside_carboxyl(acid), _MOST_POSITIVE) - (step - 1)
+    charge = charge_that_counts(acid) - (step - 1)
     return float(to_thermodynamic(pka, charge, ionic_strength_m, constant, temperature_c))

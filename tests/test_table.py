@@ -7,6 +7,7 @@ from pathlib import Path
 
 import pytest
 
+from qsar.cli import main
 from qsar.errors import UserError
 from qsar.sources import key_of
 from qsar.table import COLUMNS, read_table, sha256
@@ -148,3 +149,12 @@ def test_sha256_is_that_of_the_bytes(tmp_path: Path) -> None:
     assert sha256(path) == "ba7816bf8f01cfea414140de5dae2223b00361a396177a9cb410ff61f20015ad"
     path.write_bytes(bytes(range(256)))
     assert sha256(path) == hashlib.sha256(bytes(range(256))).hexdigest()
+
+
+def test_a_table_and_its_curation_bring_a_constant_to_the_same_value(tmp_path: Path) -> None:
+    """A peptide of three lysines too, whose charges do not all count; the value is made up."""
+    smiles = "NCCCCC(N)C(=O)NC(CCCCN)C(=O)NC(CCCCN)C(=O)O"
+    path = write(tmp_path, f"smiles,pka,ionic_strength_m,constant\n{smiles},3.1,0.1,concentration\n")
+    assert main(["curate", str(path), "--output", str(tmp_path / "clean.csv")]) == 0
+    (direct,), (curated,) = read_table(path), read_table(tmp_path / "clean.csv")
+    assert curated.pka == pytest.approx(direct.pka, abs=1e-4)

@@ -16,7 +16,7 @@ from qsar.conditions import CONSTANT_KINDS, GAS_CONSTANT, ZERO_CELSIUS, pka_shif
 from qsar.curation.cells import CellError, Quantity, read_quantity
 from qsar.curation.columns import QUANTITIES
 from qsar.curation.readers import RawRow
-from qsar.decisions.acids import charge_beside_carboxyl
+from qsar.standard_state import charge_that_counts
 from qsar.structures import Acid, StructureError, acid_from_mol, read_acid
 
 TEMPERATURES = (15.0, 40.0)  # °C
@@ -79,7 +79,7 @@ class Usable:
     constant : str
         Kind as stated; empty where not known.
     charge : int
-        Charge of the acid form beside the carboxyl groups.
+        Charge of the acid form beside the carboxyl groups, as far as a correction for ionic strength counts it.
     changes : tuple of str
         What was read otherwise than it stands, corrected or assumed.
     """
@@ -136,7 +136,7 @@ def apply_rules(row: RawRow, defaults: Defaults) -> Usable:
         temperature,
         strength,
         constant,
-        charge_beside_carboxyl(acid),
+        charge_that_counts(acid),
         " ".join(cells.get("name", "").split()),
         cells.get("family", ""),
         cells.get("source", ""),
